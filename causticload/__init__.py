@@ -1,0 +1,3 @@
+"""Finds where, when and how strongly a curved glazed or polished facade concentrates sunlight."""
+
+__version__ = "0.1.0"

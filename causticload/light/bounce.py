@@ -1,0 +1,142 @@
+"""Second reflections: follow a beam's rays off the mirror that they meet."""
+
+from __future__ import annotations
+
+import numpy as np
+from numba import njit
+
+from causticload.light.bvh import Tracer
+from causticload.light.facets import Facets, normal_at, reflect
+from causticload.light.targets import Meanings
+from causticload.light.tubes import Beams, _frame_beam, _s_axis, empty_beams
+from causticload.optics.tables import lookup
+from causticload.scene.model import Bools, Floats, Ints
+
+
+@njit(cache=True, nogil=True, error_model="numpy")
+def _barycentric(corner, x, out):
+    """Barycentric coordinates of ``x`` in the triangle ``corner`` (3, 3), by areas."""
+    e = np.empty((2, 3))
+    p = np.empty(3)
+    for i in range(3):
+        e[0, i] = corner[1, i] - corner[0, i]
+        e[1, i] = corner[2, i] - corner[0, i]
+        p[i] = x[i] - corner[0, i]
+    d00 = e[0, 0] ** 2 + e[0, 1] ** 2 + e[0, 2] ** 2
+    d01 = e[0, 0] * e[1, 0] + e[0, 1] * e[1, 1] + e[0, 2] * e[1, 2]
+    d11 = e[1, 0] ** 2 + e[1, 1] ** 2 + e[1, 2] ** 2
+    d20 = p[0] * e[0, 0] + p[1] * e[0, 1] + p[2] * e[0, 2]
+    d21 = p[0] * e[1, 0] + p[1] * e[1, 1] + p[2] * e[1, 2]
+    det = d00 * d11 - d01 * d01
+    out[1] = (d11 * d20 - d01 * d21) / det
+    out[2] = (d00 * d21 - d01 * d20) / det
+    out[0] = 1.0 - out[1] - out[2]
+
+
+@njit(cache=True, nogil=True, error_model="numpy")
+def _bounce(F, R, sheet_of, B, triangle, distance, clearance, C, good):
+    """Reflect every ray of the beams ``B`` where it met ``triangle``; fills the beams ``C``."""
+    x, n, b = np.empty(3), np.empty(3), np.empty(3)
+    for k in range(B.before.size):
+        way = 0.0
+        for j in range(6):
+            t = triangle[k, j]
+            d = B.direction[k, j]
+            f = F.face_normal[t]
+            toward = d[0] * f[0] + d[1] * f[1] + d[2] * f[2]
+            side = -1.0 if toward > 0.0 else 1.0
+            for i in range(3):
+                x[i] = B.start[k, j, i] + distance[k, j] * d[i]
+            _barycentric(F.corner[t], x, b)
+            normal_at(F, t, b[0], b[1], b[2], n)
+            reflect(d, n, C.direction[k, j])
+            r = C.direction[k, j]
+            # The normal must face the light and the ray must leave the facet.
+            if side * (d[0] * n[0] + d[1] * n[1] + d[2] * n[2]) >= 0.0:
+                good[k] = False
+            if side * (r[0] * f[0] + r[1] * f[1] + r[2] * f[2]) <= 0.0:
+                good[k] = False
+            for i in range(3):
+                C.start[k, j, i] = x[i] + side * clearance * f[i]
+            if j < 3:
+                way += distance[k, j] / 3.0
+            if j == 0:
+                for i in range(3):
+                    C.side[k, i] = side * f[i]
+        C.before[k] = B.before[k] + way
+        _frame_beam(C.start[k], C.direction[k], C.chief[k], C.frame[k])
+        # Mirror law backwards: the chief normal halves the angle between the two directions.
+        d, r = B.frame[k, 0], C.frame[k, 0]
+        length = np.sqrt((r[0] - d[0]) ** 2 + (r[1] - d[1]) ** 2 + (r[2] - d[2]) ** 2)
+        for i in range(3):
+            n[i] = (r[i] - d[i]) / length
+        cos_theta = min(1.0, abs(d[0] * n[0] + d[1] * n[1] + d[2] * n[2]))
+        _s_axis(d, n, C.s_axis[k])
+        C.cos_incidence[k] = cos_theta
+        turn = (
+            C.s_axis[k, 0] * B.s_axis[k, 0]
+            + C.s_axis[k, 1] * B.s_axis[k, 1]
+            + C.s_axis[k, 2] * B.s_axis[k, 2]
+        )
+        c2 = min(1.0, turn * turn)
+        row = sheet_of[triangle[k, 0]]
+        for band in range(2):
+            s, p = B.power[k, 2 * band], B.power[k, 2 * band + 1]
+            C.power[k, 2 * band] = lookup(R[row, band, 0], cos_theta) * (c2 * s + (1.0 - c2) * p)
+            C.power[k, 2 * band + 1] = lookup(R[row, band, 1], cos_theta) * (
+                (1.0 - c2) * s + c2 * p
+            )
+
+
+def bounce(
+    beams: Beams, *, F: Facets, R: Floats, sheet_of: Ints, meanings: Meanings, tracer: Tracer,
+    clearance_m: float,
+) -> tuple[Beams, Bools, Ints]:  # fmt: skip
+    """Reflect beams off the mirror that all their rays meet.
+
+    The two polarisations are turned from the first plane of incidence into the second: light
+    reflected once is partly polarised, and a second pane at right angles may send on far less,
+    or more, than two unpolarised reflectances would say. The blur of the sun's disc is that of a
+    flat second mirror over the whole path; a curved one would widen or narrow it further.
+
+    Parameters
+    ----------
+    beams : Beams
+        ``k`` beams.
+    F : Facets
+        The scene's triangles.
+    R : (sheets, 2, 2, angles) float
+        Reflectance tables.
+    sheet_of : (m,) int
+        Row of the tables for each triangle, -1 off reflectors.
+    meanings : Meanings
+        What each triangle is to a ray.
+    tracer : Tracer
+        Finds what rays meet.
+    clearance_m : float
+        How far above the facet rays start. [m]
+
+    Returns
+    -------
+    bounced : Beams
+        ``k`` beams.
+    whole : (k,) bool
+        Whether all six rays met one mirror and left it. The other rows carry no meaning.
+    sheet : (k,) int
+        Row of the tables of the mirror met.
+    """
+    k = len(beams.before)
+    triangle, distance = tracer.first_hit(
+        beams.start.reshape(-1, 3), beams.direction.reshape(-1, 3)
+    )
+    triangle, distance = triangle.reshape(k, 6), distance.reshape(k, 6)
+    unit = np.where(triangle >= 0, meanings.front[triangle], 0)
+    mirror = np.where(triangle >= 0, sheet_of[triangle], -1)
+    whole = (mirror >= 0).all(axis=1) & (unit == unit[:, :1]).all(axis=1)
+    triangle = np.where(whole[:, None], triangle, 0)
+    distance = np.where(whole[:, None], distance, 1.0)
+    bounced = empty_beams(k)
+    _bounce(
+        F, R, np.maximum(sheet_of, 0), beams, triangle, distance, clearance_m, bounced, whole
+    )  # fmt: skip
+    return bounced, whole, sheet_of[triangle[:, 0]]

@@ -1,0 +1,442 @@
+"""One position of the sun: where the light of every ray tube lands.
+
+The tubes are worked off in generations. Each generation is lit, asks whether it sees the sun and
+what its beams meet, and then every tube is one of
+
+- *dark*: turned away from the sun, or in shadow;
+- *gone*: all its rays meet the sky, or all meet something that is no receiver;
+- *landed*: all its rays meet one chart and three corners describe its image well enough;
+- *bounced*: all its rays meet one mirror: it goes on as a beam from there, once;
+- *settled*: its rays disagree, and it is small: its receiver samples ask one by one;
+- *halved*: anything else; the halves form the next generation, and inherit what is known.
+
+Every watt is entered in a ledger as it goes.
+"""
+
+from __future__ import annotations
+
+from concurrent.futures import ThreadPoolExecutor
+from dataclasses import dataclass, field
+from typing import NamedTuple
+
+import numpy as np
+
+from causticload.light.bounce import bounce
+from causticload.light.prepare import LitScene
+from causticload.light.settle import count_samples, settle
+from causticload.light.splat import splat
+from causticload.light.targets import (
+    BLOCKED,
+    MIRROR,
+    SKY,
+    UNKNOWN,
+    count_sun,
+    distinct_charts,
+    find_targets,
+)
+from causticload.light.tubes import (
+    GRAZES,
+    LIT,
+    TURNED_AWAY,
+    Beams,
+    Tubes,
+    halve,
+    image_errors,
+    light_tubes,
+)
+from causticload.scene.model import Bools, Floats, Ints
+
+# A tube is small enough when it misplaces the middle of an image's edge by less than this share
+# of the radius of the sun's image...
+LINEAR = 0.15
+# ...or by less than this many metres, which no receiver cell or eye can tell.
+LINEAR_FLOOR_M = 0.002
+# A straddling tube with no more samples than this asks for each instead of being halved.
+SETTLE_SAMPLES = 40
+# No tube is halved more often than this on its own account: 2^-20 of a facet is dust.
+MOST_HALVINGS = 20
+# A tube that straddles the edge of a mirror is halved this often; what is left is not followed.
+MIRROR_HALVINGS = 7
+
+
+class Generation(NamedTuple):
+    """Tubes at work and what is known of them. ``n`` tubes."""
+
+    tubes: Tubes
+    sun: Floats  # (n,) share of the tube that sees the sun, or UNKNOWN
+    target: Ints  # (n,) what the whole beam meets, or UNKNOWN
+    age: Ints  # (n,) halvings so far
+
+    def take(self, index: Ints | Bools) -> Generation:
+        """Return the tubes at ``index``."""
+        return Generation(
+            self.tubes.take(index), self.sun[index], self.target[index], self.age[index]
+        )
+
+
+def halve_generation(parents: Generation, edge: Ints) -> Generation:
+    """Halve tubes at an edge; the halves keep what holds for the whole of their parent."""
+    sun = np.where(parents.sun == 1.0, 1.0, UNKNOWN)
+    return Generation(
+        halve(parents.tubes, edge),
+        np.tile(sun, 2),
+        np.tile(parents.target, 2),
+        np.tile(parents.age + 1, 2),
+    )
+
+
+@dataclass
+class Field:
+    """What one position of the sun does, for a direct normal irradiance of 1 W/m²."""
+
+    load: Floats  # (n,) reflected irradiance over direct normal irradiance, mean over cells [1]
+    images: Ints  # (n,) reflected images of the sun in view
+    ledger: dict[str, float]  # flux over direct normal irradiance [m²]
+    tubes: int = 0  # tubes that landed or settled
+    rays: int = 0
+    bounced: list[Bounced] = field(default_factory=list)
+
+    def merge(self, other: Field) -> None:
+        """Add the light of other tubes under the same sun."""
+        self.load += other.load
+        self.images += other.images
+        self.tubes += other.tubes
+        self.rays += other.rays
+        self.bounced += other.bounced
+        for key, value in other.ledger.items():
+            self.ledger[key] += value
+
+
+class Bounced(NamedTuple):
+    """Beams after a second reflection, as they were before it, and what made them."""
+
+    beams: Beams
+    sources: Beams
+    tubes: Tubes
+    sheet: Ints  # (k,) row of the sun's discs that blurs them
+    kept: Floats  # (k,) share of their power that stays in the mirror direction
+
+
+LEDGER = (
+    "intercepted", "absorbed", "receivers", "obstructions", "sky", "scattered", "unfollowed",
+    "rereflected",
+)  # fmt: skip
+
+
+def solve_field(
+    lit: LitScene, *, sun_direction: Floats, sun_radius: float, threads: int = 1
+) -> Field:
+    """Find where the light of every reflector lands for one position of the sun.
+
+    Parameters
+    ----------
+    lit : LitScene
+        The prepared scene.
+    sun_direction : (3,) float
+        Unit vector to the sun, scene frame.
+    sun_radius : float
+        Angular radius of the sun. [rad]
+    threads : int
+        Threads to share the tubes among.
+
+    Returns
+    -------
+    field : Field
+        Loads, images and ledger for a direct normal irradiance of 1 W/m².
+    """
+    radii, weights = lit.rings(sun_radius)
+    s = np.ascontiguousarray(sun_direction, dtype=np.float64)
+
+    def work(share: Ints) -> Field:
+        return _Walk(lit, s, radii, weights).run(lit.base.take(share))
+
+    shares = [np.arange(i, len(lit.base.facet), threads) for i in range(max(1, threads))]
+    if len(shares) == 1:
+        total = work(shares[0])
+    else:
+        with ThreadPoolExecutor(len(shares)) as pool:
+            total, *rest = pool.map(work, shares)
+        for part in rest:
+            total.merge(part)
+    # What a mirror that is a receiver too takes in is entered where the mirror is.
+    landed = total.load * lit.point_areas
+    total.ledger["receivers"] = float(landed[~lit.mirror_point].sum())
+    return total
+
+
+class _Walk:
+    """The generations of one share of the tubes."""
+
+    def __init__(self, lit: LitScene, s: Floats, radii: Floats, weights: Floats) -> None:
+        self.lit, self.s = lit, s
+        self.radii, self.weights = radii, weights
+        self.reach = np.ascontiguousarray(radii[:, -1])
+        n = lit.scene.point_count
+        self.field = Field(np.zeros(n), np.zeros(n, np.int32), dict.fromkeys(LEDGER, 0.0))
+
+    def run(self, base: Tubes) -> Field:
+        """Work off all tubes."""
+        n = len(base.facet)
+        generation = Generation(
+            base, np.full(n, float(UNKNOWN)), np.full(n, UNKNOWN, np.int32), np.zeros(n, np.int32)
+        )
+        while len(generation.age):
+            generation = self._next(generation)
+        return self.field
+
+    def _next(self, generation: Generation) -> Generation:
+        """Do what can be done with a generation and return the halves of the rest."""
+        generation, beams = self._light(generation)
+        if not len(generation.age):
+            return generation
+        code = self._targets(generation, beams)
+        agreed = (code == code[:, :1]).all(axis=1)
+        generation = generation._replace(
+            target=np.where(agreed, code[:, 0], UNKNOWN).astype(np.int32)
+        )
+        receiving = ((code >= 0) | (code <= MIRROR)).any(axis=1)
+        whole = agreed & (generation.sun == 1.0)
+
+        def pick(mask: Bools) -> tuple[Generation, Beams, Ints]:
+            return generation.take(mask), beams.take(mask), code[mask]
+
+        self._lose(*pick(~receiving))
+        return _join(
+            [
+                self._land(*pick(whole & (code[:, 0] >= 0))),
+                self._mirror(*pick(whole & (code[:, 0] <= MIRROR))),
+                self._straddle(*pick(~whole & receiving)),
+            ]
+        )
+
+    def _light(self, generation: Generation) -> tuple[Generation, Beams]:
+        """Light a generation and leave out what is dark."""
+        lit = self.lit
+        beams, outcome = light_tubes(
+            lit.F, lit.R, generation.tubes, sun_direction=self.s, clearance_m=lit.clearance_m
+        )
+        sun = np.where(outcome == TURNED_AWAY, 0.0, generation.sun)
+        asks = sun == UNKNOWN
+        if asks.any():
+            seen = count_sun(beams.take(asks), tracer=lit.tracer, sun_direction=self.s)
+            self.field.rays += 4 * len(seen)
+            sun[asks] = seen / 4.0
+        generation = generation._replace(sun=sun)
+        lost = np.flatnonzero((outcome == GRAZES) & (sun > 0.0))
+        self._add("unfollowed", self._take_in(generation.take(lost), beams.take(lost)))
+        keep = (outcome == LIT) & (sun > 0.0)
+        return generation.take(keep), beams.take(keep)
+
+    def _targets(self, generation: Generation, beams: Beams) -> Ints:
+        """Return what each beam's rays meet, (n, 4); rays are sent where it is not known."""
+        code = np.repeat(generation.target[:, None], 4, axis=1)
+        asks = generation.target == UNKNOWN
+        if asks.any():
+            code[asks], _ = self._find(beams.take(asks), generation.tubes.sheet[asks])
+        return code
+
+    def _find(self, beams: Beams, ring: Ints) -> tuple[Ints, Ints]:
+        lit = self.lit
+        self.field.rays += 4 * len(ring)
+        return find_targets(
+            beams, F=lit.F, meanings=lit.meanings, tracer=lit.tracer, reach=self.reach, ring=ring
+        )
+
+    # The ledger -------------------------------------------------------------------------------
+
+    def _add(self, key: str, value: Floats) -> None:
+        self.field.ledger[key] += float(np.sum(value))
+
+    def _take_in(self, generation: Generation, beams: Beams) -> Floats:
+        """Enter what tubes take in, keep and scatter; return the flux they mirror on, (n,)."""
+        tubes = generation.tubes
+        crossing = tubes.area * np.abs(self.lit.F.face_normal[tubes.facet] @ self.s)
+        # The sheets of one facet share the light that falls on it: the first one enters it.
+        taken = generation.sun * crossing * self.lit.first_sheet[tubes.sheet]
+        returned = generation.sun * beams.solar
+        scattered = returned * self.lit.scatter[tubes.sheet]
+        self._add("intercepted", taken)
+        self._add("absorbed", taken - returned)
+        self._add("scattered", scattered)
+        return returned - scattered
+
+    def _lose(self, generation: Generation, beams: Beams, code: Ints) -> None:
+        """Enter tubes that no receiver and no mirror sees."""
+        self._split_flux(self._take_in(generation, beams), code)
+
+    def _split_flux(self, flux: Floats, code: Ints) -> None:
+        """Enter flux that meets the sky or an obstruction, by the share of rays that do."""
+        self._add("sky", flux * (code == SKY).mean(axis=1))
+        self._add("obstructions", flux * (code == BLOCKED).mean(axis=1))
+
+    # Beams that agree -------------------------------------------------------------------------
+
+    def _land(self, generation: Generation, beams: Beams, code: Ints) -> Generation:
+        """Lay whole beams on the chart they meet; return the halves of those too large."""
+        chart = code[:, 0]
+        edge, fine = self._is_fine(beams, chart, generation.tubes.sheet, generation.age)
+        ready, landed = generation.take(fine), beams.take(fine)
+        self._take_in(ready, landed)
+        self._splat(landed, landed.solar * self._mirrored(ready.tubes.sheet), ready.tubes.sheet,
+                    chart[fine])  # fmt: skip
+        return halve_generation(generation.take(~fine), edge[~fine])
+
+    def _mirrored(self, sheet: Ints) -> Floats:
+        return 1.0 - self.lit.scatter[sheet]
+
+    def _is_fine(
+        self, beams: Beams, chart: Ints, ring: Ints, age: Ints
+    ) -> tuple[Ints, Bools]:
+        """Return the edge to halve, and whether three corners describe the image well enough."""
+        G = self.lit.grids
+        error, length, depth = image_errors(beams, o=G.origin[chart], n=G.normal[chart])
+        rho = (depth + beams.before) * self.reach[ring]
+        worst = error.max(axis=1)
+        fine = worst <= np.maximum(LINEAR * rho, LINEAR_FLOOR_M)
+        # A ray of the halves may pass the plane by where the rim rays did not: leave it whole.
+        fine |= (depth < 0.0) | (age >= MOST_HALVINGS)
+        edge = np.where(worst > 0.0, error.argmax(axis=1), length.argmax(axis=1))
+        return edge, fine
+
+    def _splat(self, beams: Beams, factor: Floats, ring: Ints, chart: Ints) -> None:
+        self.field.tubes += len(chart)
+        splat(
+            beams, factor=factor, radii=self.radii, weights=self.weights, ring=ring, chart=chart,
+            grids=self.lit.grids, load=self.field.load, images=self.field.images,
+        )  # fmt: skip
+
+    # Beams that disagree ----------------------------------------------------------------------
+
+    def _straddle(self, generation: Generation, beams: Beams, code: Ints) -> Generation:
+        """Settle small beams that straddle an edge; return the halves of the others."""
+        ring = generation.tubes.sheet
+        small = self._is_small(beams, code, ring)
+        old = generation.age >= np.where(
+            (code <= MIRROR).any(axis=1), MIRROR_HALVINGS, MOST_HALVINGS
+        )
+        done = (small & ~(code <= MIRROR).any(axis=1)) | old
+        ready, settled = generation.take(done), beams.take(done)
+        flux = self._take_in(ready, settled)
+        self._split_flux(flux, code[done])
+        self._add("unfollowed", flux * (code[done] <= MIRROR).mean(axis=1))
+        self._settle(settled, None, code[done], ready.sun == 1.0,
+                     settled.solar * self._mirrored(ring[done]), ring[done])  # fmt: skip
+        rest = beams.take(~done)
+        return halve_generation(generation.take(~done), _longest_edge(rest))
+
+    def _is_small(self, beams: Beams, code: Ints, ring: Ints) -> Bools:
+        """Whether asking for each sample costs less than halving the beam again."""
+        beam, chart = distinct_charts(code)
+        count = count_samples(
+            beams, beam=beam, chart=chart, radii=self.radii, weights=self.weights, ring=ring,
+            grids=self.lit.grids,
+        )  # fmt: skip
+        total = np.bincount(beam, weights=count, minlength=len(ring))
+        # Halving is of no use once the sun's own disc fills most of the footprint.
+        G = self.lit.grids
+        _, length, z = image_errors(
+            beams.take(beam), o=G.origin[chart], n=G.normal[chart]
+        )
+        blurred = length.max(axis=1) <= self.reach[ring[beam]] * (z + beams.before[beam])
+        dust = np.ones(len(ring), bool)
+        np.logical_and.at(dust, beam, blurred | (z < 0.0))
+        return (total <= SETTLE_SAMPLES) | dust
+
+    def _settle(
+        self, beams: Beams, sources: Beams | None, code: Ints, sun_clear: Bools, factor: Floats,
+        ring: Ints,
+    ) -> None:  # fmt: skip
+        lit = self.lit
+        beam, chart = distinct_charts(code)
+        self.field.tubes += len(ring)
+        settle(
+            beams, sources=sources, beam=beam, chart=chart, sun_clear=sun_clear, factor=factor,
+            radii=self.radii, weights=self.weights, ring=ring, grids=lit.grids,
+            tracer=lit.tracer, sun_direction=self.s, clearance_m=lit.clearance_m,
+            load=self.field.load,
+        )  # fmt: skip
+
+    # Beams that meet a mirror -----------------------------------------------------------------
+
+    def _mirror(self, generation: Generation, beams: Beams, code: Ints) -> Generation:
+        """Follow whole beams off the mirror they meet; return the halves of those too large."""
+        lit = self.lit
+        if not len(generation.age):
+            return generation
+        after, whole, sheet = bounce(
+            beams, F=lit.F, R=lit.R, sheet_of=lit.sheet_of, meanings=lit.meanings,
+            tracer=lit.tracer, clearance_m=lit.clearance_m,
+        )  # fmt: skip
+        self.field.rays += 6 * len(sheet)
+        torn = ~whole
+        lost = torn & (generation.age >= MIRROR_HALVINGS)
+        flux = self._take_in(generation.take(lost), beams.take(lost))
+        self._add("unfollowed", flux)
+        self._add("rereflected", flux)
+        again, edge = self._follow(
+            generation.take(whole), beams.take(whole), after.take(whole), sheet[whole]
+        )
+        torn &= ~lost
+        return _join(
+            [
+                halve_generation(generation.take(torn), _longest_edge(beams.take(torn))),
+                halve_generation(again, edge),
+            ]
+        )
+
+    def _follow(
+        self, generation: Generation, before: Beams, after: Beams, sheet: Ints
+    ) -> tuple[Generation, Ints]:
+        """Land beams after their second reflection; return those too large and where to halve."""
+        lit = self.lit
+        own = generation.tubes.sheet
+        # The wider of the two blurs stands for both where surfaces are rough.
+        ring = np.where(self.reach[sheet] > self.reach[own], sheet, own).astype(np.int32)
+        code, _ = self._find(after, ring)
+        agreed = (code == code[:, :1]).all(axis=1)
+        lands = agreed & (code[:, 0] >= 0)
+        edge = np.zeros(len(sheet), np.int32)
+        fine = np.ones(len(sheet), bool)
+        edge[lands], fine[lands] = self._is_fine(
+            after.take(lands), code[lands, 0], ring[lands], generation.age[lands]
+        )
+        straddles = ~agreed & (code >= 0).any(axis=1)
+        small = self._is_small(after.take(straddles), code[straddles], ring[straddles])
+        fine[straddles] = small | (generation.age[straddles] >= MOST_HALVINGS)
+        edge[straddles] = _longest_edge(after.take(straddles))
+
+        first = self._take_in(generation.take(fine), before.take(fine))
+        onward = self._mirrored(own) * self._mirrored(sheet)
+        factor = after.solar * onward
+        self._add("rereflected", first)
+        self._add("absorbed", first - (after.solar * self._mirrored(own))[fine])
+        self._add("scattered", (after.solar * self._mirrored(own) - factor)[fine])
+        self._split_flux(factor[fine], code[fine])
+        self._add("unfollowed", factor[fine] * (code[fine] <= MIRROR).mean(axis=1))
+        now = fine & lands
+        self._splat(after.take(now), factor[now], ring[now], code[now, 0])
+        now = fine & straddles
+        self._settle(after.take(now), before.take(now), code[now], np.ones(now.sum(), bool),
+                     factor[now], ring[now])  # fmt: skip
+        self.field.bounced.append(
+            Bounced(
+                after.take(fine), before.take(fine), generation.tubes.take(fine), ring[fine],
+                onward[fine],
+            )  # fmt: skip
+        )
+        return generation.take(~fine), edge[~fine]
+
+
+def _join(parts: list[Generation]) -> Generation:
+    """Put generations together."""
+    tubes = Tubes(*(np.concatenate(a) for a in zip(*(g.tubes for g in parts), strict=True)))
+    return Generation(
+        tubes, *(np.concatenate(a) for a in zip(*(g[1:] for g in parts), strict=True))
+    )
+
+
+def _longest_edge(beams: Beams) -> Ints:
+    """Return the longest edge of each beam where it starts, (n,)."""
+    corner = beams.start[:, :3]
+    length = np.linalg.norm(np.roll(corner, -1, axis=1) - corner, axis=2)
+    return length.argmax(axis=1)

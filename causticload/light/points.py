@@ -1,0 +1,292 @@
+"""Light at single points: a peak looked at closely, an eye, the panels behind a hot spot.
+
+Grids serve whole receivers; here a few points, on a surface or in the air, ask every tube. Only
+tubes whose beam passes near are refined, and every contribution that counts sends its own rays
+to the reflecting point and from there to the sun. It shares the overlap law with the grids, but
+neither their footprints nor their way of settling what is seen.
+"""
+
+from __future__ import annotations
+
+import math
+from dataclasses import dataclass
+from typing import NamedTuple
+
+import numpy as np
+from numba import njit
+
+from causticload.light.field import Bounced, halve_generation
+from causticload.light.field import Generation as _Generation
+from causticload.light.overlap import flux_density
+from causticload.light.prepare import LitScene
+from causticload.light.settle import blocked_between, nearest_in_triangle
+from causticload.light.splat import has_inside
+from causticload.light.tubes import LIT, Beams, Tubes, light_tubes
+from causticload.scene.model import Bools, Floats, Ints
+
+# Finer than for grids: a peak is read off to the last per cent.
+FINE = 0.05
+FINE_FLOOR_M = 0.0005
+MOST_HALVINGS = 16
+
+
+class Parts(NamedTuple):
+    """What each tube gives to each point. ``q`` parts."""
+
+    point: Ints  # (q,) row of the point
+    panel: Ints  # (q,) panel of the first reflection
+    load: Floats  # (q,) share of the point's load [1]
+    visible: Floats  # (q,) the same in the visible band
+    direction: Floats  # (q, 3) unit, from the point to where the light comes from
+    reflectance: Floats  # (q,) solar, of all reflections together [1]
+    distance: Floats  # (q,) path from the first reflection [m]
+    whole: Bools  # (q,) the middle of the sun's image is in view within this tube
+    second: Bools  # (q,) by way of a second reflection
+
+
+@dataclass
+class PointLight:
+    """Loads at points for a direct normal irradiance of 1 W/m²."""
+
+    load: Floats  # (p,) [1]
+    images: Ints  # (p,)
+    parts: Parts
+
+
+@njit(cache=True, nogil=True, error_model="numpy")
+def _section(start, direction, chief, frame, z, q):
+    """Where three rays cross the plane across the chief ray at depth ``z``, into ``q`` (3, 2)."""
+    for j in range(3):
+        w = x = y = dw = dx = dy = 0.0
+        for i in range(3):
+            offset, d = start[j, i] - chief[i], direction[j, i]
+            w += offset * frame[0, i]
+            x += offset * frame[1, i]
+            y += offset * frame[2, i]
+            dw += d * frame[0, i]
+            dx += d * frame[1, i]
+            dy += d * frame[2, i]
+        q[j, 0] = x + (z - w) * dx / dw
+        q[j, 1] = y + (z - w) * dy / dw
+
+
+@njit(cache=True, nogil=True, error_model="numpy")
+def _approach(B, C, radius, reach, ring, near, error, edge):
+    """Tell which beams pass within ``radius`` of ``C``, and how well three rays describe them."""
+    q, m, far = np.empty((3, 2)), np.empty((3, 2)), np.empty((3, 2))
+    for k in range(B.before.size):
+        f = B.frame[k]
+        z = x = y = 0.0
+        for i in range(3):
+            offset = C[i] - B.chief[k, i]
+            z += offset * f[0, i]
+            x += offset * f[1, i]
+            y += offset * f[2, i]
+        near[k], error[k], edge[k] = False, 0.0, 0
+        if z < -radius:
+            continue
+        _section(B.start[k, :3], B.direction[k, :3], B.chief[k], f, z, q)
+        _section(B.start[k, :3], B.direction[k, :3], B.chief[k], f, z + radius, far)
+        _section(B.start[k, 3:], B.direction[k, 3:], B.chief[k], f, z, m)
+        bulge, spread, size, worst = 0.0, 0.0, 0.0, -1.0
+        mx, my = (q[0, 0] + q[1, 0] + q[2, 0]) / 3.0, (q[0, 1] + q[1, 1] + q[2, 1]) / 3.0
+        for j in range(3):
+            n = (j + 1) % 3
+            e = math.hypot(
+                m[j, 0] - 0.5 * (q[j, 0] + q[n, 0]), m[j, 1] - 0.5 * (q[j, 1] + q[n, 1])
+            )
+            bulge += e
+            if e > worst:
+                worst, edge[k] = e, j
+            spread = max(spread, math.hypot(far[j, 0] - q[j, 0], far[j, 1] - q[j, 1]))
+            size = max(size, math.hypot(q[j, 0] - mx, q[j, 1] - my))
+        rho = reach[ring[k]] * (max(z, 0.0) + radius + B.before[k])
+        within = size + 2.0 * bulge + spread + rho + radius
+        if math.hypot(x - mx, y - my) <= within:
+            near[k], error[k] = True, worst / max(rho, 1e-12)
+
+
+@njit(cache=True, nogil=True, error_model="numpy")
+def _gather(B, factor, radii, weights, ring, P, N, tube, point, load, weight, whole):
+    """Write every contribution of a beam to a point; without room, count the pairs at most."""
+    q, w = np.empty((3, 2)), np.empty(3)
+    found = 0
+    for k in range(B.before.size):
+        f, r = B.frame[k], radii[ring[k]]
+        for p in range(len(P)):
+            z = x = y = 0.0
+            for i in range(3):
+                offset = P[p, i] - B.chief[k, i]
+                z += offset * f[0, i]
+                x += offset * f[1, i]
+                y += offset * f[2, i]
+            cos_g = -(N[p, 0] * f[0, 0] + N[p, 1] * f[0, 1] + N[p, 2] * f[0, 2])
+            if N[p, 0] == 0.0 and N[p, 1] == 0.0 and N[p, 2] == 0.0:
+                cos_g = 1.0  # an eye looks at the light
+            if z <= 0.0 or cos_g <= 0.0:
+                continue
+            _section(B.start[k, :3], B.direction[k, :3], B.chief[k], f, z, q)
+            rho = r[-1] * (z + B.before[k])
+            if (
+                min(q[0, 0], q[1, 0], q[2, 0]) > x + rho
+                or max(q[0, 0], q[1, 0], q[2, 0]) < x - rho
+                or min(q[0, 1], q[1, 1], q[2, 1]) > y + rho
+                or max(q[0, 1], q[1, 1], q[2, 1]) < y - rho
+            ):
+                continue
+            if tube.size == 0:
+                found += 1
+                continue
+            density = flux_density(
+                q[0, 0] - x, q[0, 1] - y, q[1, 0] - x, q[1, 1] - y, q[2, 0] - x, q[2, 1] - y,
+                z + B.before[k], r, weights[ring[k]],
+            )  # fmt: skip
+            if density <= 0.0:
+                continue
+            nearest_in_triangle(q, x, y, w)
+            tube[found], point[found] = k, p
+            load[found] = factor[k] * cos_g * density
+            for i in range(3):
+                weight[found, i] = w[i]
+            whole[found] = has_inside(q, x, y)
+            found += 1
+    return found
+
+
+def solve_points(
+    lit: LitScene, *, sun_direction: Floats, sun_radius: float, points: Floats,
+    normals: Floats | None = None, bounced: list[Bounced] | None = None,
+) -> PointLight:  # fmt: skip
+    """Find the reflected light at points.
+
+    Parameters
+    ----------
+    lit : LitScene
+        The prepared scene.
+    sun_direction : (3,) float
+        Unit vector to the sun, scene frame.
+    sun_radius : float
+        Angular radius of the sun. [rad]
+    points : (p, 3) float
+        Where, scene frame; near together, or the search is slow. [m]
+    normals : (p, 3) float, optional
+        Unit normals of the surface at the points. Without them each beam falls on a plane of its
+        own across it, as on an eye that turns to it.
+    bounced : list of Bounced, optional
+        Beams after a second reflection, from :func:`causticload.light.field.solve_field`.
+
+    Returns
+    -------
+    light : PointLight
+        Loads, images and the parts they are made of.
+    """
+    P = np.ascontiguousarray(points, dtype=np.float64).reshape(-1, 3)
+    N = np.zeros_like(P) if normals is None else np.ascontiguousarray(normals, dtype=np.float64)
+    s = np.ascontiguousarray(sun_direction, dtype=np.float64)
+    radii, weights = lit.rings(sun_radius)
+    ask = _Question(lit, s, radii, weights, P, N)
+    found = [ask.direct()]
+    found += [ask.second(b) for b in bounced or [] if len(b.sheet)]
+    parts = Parts(*(np.concatenate(a) for a in zip(*found, strict=True)))
+    return PointLight(
+        load=np.bincount(parts.point, weights=parts.load, minlength=len(P)),
+        images=np.bincount(parts.point[parts.whole], minlength=len(P)).astype(np.int32),
+        parts=parts,
+    )
+
+
+class _Question:
+    """Points that ask under one sun."""
+
+    def __init__(
+        self, lit: LitScene, s: Floats, radii: Floats, weights: Floats, P: Floats, N: Floats
+    ) -> None:
+        self.lit, self.s, self.radii, self.weights = lit, s, radii, weights
+        self.P, self.N = P, N
+        self.reach = np.ascontiguousarray(radii[:, -1])
+        self.middle = 0.5 * (P.min(axis=0) + P.max(axis=0))
+        self.radius = float(np.linalg.norm(P - self.middle, axis=1).max())
+
+    def _approach(self, beams: Beams, ring: Ints) -> tuple[Bools, Floats, Ints]:
+        n = len(ring)
+        near, error, edge = np.empty(n, bool), np.empty(n), np.empty(n, np.int64)
+        _approach(beams, self.middle, self.radius, self.reach, ring, near, error, edge)
+        return near, error, edge
+
+    def direct(self) -> Parts:
+        """Light by one reflection: refine the tubes that pass near, then gather."""
+        lit = self.lit
+        base = lit.base
+        n = len(base.facet)
+        work = _Generation(base, np.ones(n), np.zeros(n, np.int32), np.zeros(n, np.int32))
+        tubes: list[Tubes] = []
+        while len(work.age):
+            beams, outcome = light_tubes(
+                lit.F, lit.R, work.tubes, sun_direction=self.s, clearance_m=lit.clearance_m
+            )
+            near, error, edge = self._approach(beams, work.tubes.sheet)
+            near &= outcome == LIT
+            fine = (error <= FINE) | (work.age >= MOST_HALVINGS)
+            tubes.append(work.tubes.take(near & fine))
+            rest = near & ~fine
+            work = halve_generation(work.take(rest), edge[rest])
+        ready = Tubes(*(np.concatenate(a) for a in zip(*tubes, strict=True)))
+        beams, _ = light_tubes(
+            lit.F, lit.R, ready, sun_direction=self.s, clearance_m=lit.clearance_m
+        )
+        kept = 1.0 - lit.scatter[ready.sheet]
+        return self._gather(beams, None, ready, kept, ready.sheet)
+
+    def second(self, bounced: Bounced) -> Parts:
+        """Light by two reflections."""
+        near, _, _ = self._approach(bounced.beams, bounced.sheet)
+        tubes = bounced.tubes.take(near)
+        kept = bounced.kept[near]
+        return self._gather(
+            bounced.beams.take(near), bounced.sources.take(near), tubes, kept,
+            bounced.sheet[near],
+        )  # fmt: skip
+
+    def _gather(
+        self, beams: Beams, sources: Beams | None, tubes: Tubes, kept: Floats, ring: Ints
+    ) -> Parts:
+        lit = self.lit
+        factor = beams.solar * kept
+        args = (beams, factor, self.radii, self.weights, ring, self.P, self.N)
+
+        def room(q: int) -> tuple[Ints, Ints, Floats, Floats, Bools]:
+            return (
+                np.empty(q, np.int32), np.empty(q, np.int32), np.empty(q), np.empty((q, 3)),
+                np.empty(q, bool),
+            )  # fmt: skip
+
+        out = room(max(1, _gather(*args, *room(0))))
+        used = _gather(*args, *out)
+        tube, point, load, weight, whole = (a[:used] for a in out)
+        X = np.einsum("qj,qji->qi", weight, beams.start[tube, :3])
+        P = self.P[point] + lit.clearance_m * self.N[point]
+        free = ~blocked_between(lit.tracer, P, X)
+        first = X
+        if sources is not None:
+            first = np.einsum("qj,qji->qi", weight, sources.start[tube, :3])
+            free[free] = ~blocked_between(lit.tracer, X[free], first[free])
+        ask = np.flatnonzero(free)
+        to_sun = np.ascontiguousarray(np.broadcast_to(self.s, (len(ask), 3)))
+        free[ask] = ~lit.tracer.occluded(np.ascontiguousarray(first[ask]), to_sun)
+        tube, point, load, X, whole = tube[free], point[free], load[free], X[free], whole[free]
+        solar = beams.solar[tube]
+        visible = beams.power[tube, 2] + beams.power[tube, 3]
+        crossing = tubes.area * np.abs(lit.F.face_normal[tubes.facet] @ self.s)
+        way = X - self.P[point]
+        length = np.linalg.norm(way, axis=1)
+        return Parts(
+            point=point,
+            panel=lit.F.panel[tubes.facet[tube]],
+            load=load,
+            visible=load * np.divide(visible, solar, out=np.zeros_like(solar), where=solar > 0),
+            direction=way / length[:, None],
+            reflectance=solar * kept[tube] / crossing[tube],
+            distance=length + beams.before[tube],
+            whole=whole,
+            second=np.full(len(tube), sources is not None),
+        )

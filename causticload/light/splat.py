@@ -1,0 +1,304 @@
+"""Lay the light of ray tubes onto the grids of receivers.
+
+A beam and a chart meet in an image triangle ``T``. Across the chief ray, ``T`` is a triangle
+``Q`` and the sun blurs each of its points to a disc, so the footprint is ``Q`` grown by the
+disc's radius. Rows of the grid are straight lines in that picture; each row is walked from
+where it enters the footprint to where it leaves, and every sample takes
+
+    E = power cos(g) flux_density(Q - P),    g: angle between the beam and the chart's normal.
+
+A cell stores the mean over its samples: one sample where the footprint is wide against the cell,
+more where it is narrow, so that a focus cannot fall between the points.
+"""
+
+from __future__ import annotations
+
+import math
+from collections.abc import Sequence
+from typing import NamedTuple
+
+import numpy as np
+from numba import njit
+
+from causticload.light.overlap import flux_density
+from causticload.light.tubes import Beams, image_on_plane
+from causticload.scene.model import Chart, Floats, Ints
+
+# Samples stand no further apart than this share of the footprint's half width.
+SAMPLE_STEP = 0.8
+MOST_SAMPLES = 40  # per cell and axis; a 1 m cell then resolves the sun's image at 3 m
+
+
+class Grids(NamedTuple):
+    """Charts of a scene as the kernels read them. ``c`` charts, ``n`` points."""
+
+    origin: Floats  # (c, 3) m, corner of cell (0, 0)
+    u: Floats  # (c, 3) unit
+    v: Floats  # (c, 3) unit
+    normal: Floats  # (c, 3) unit
+    spacing: Floats  # (c,) m
+    shape: Ints  # (c, 2) cells along u and v
+    offset: Ints  # (c,) where the chart's cells start in ``cell``
+    cell: Ints  # (sum of nu nv,) number of the point among all points, or -1
+
+
+def make_grids(charts: Sequence[Chart]) -> Grids:
+    """Lay charts out for the kernels.
+
+    Parameters
+    ----------
+    charts : sequence of Chart
+        Numbered charts: ``first`` is the number of each chart's first point.
+
+    Returns
+    -------
+    grids : Grids
+        Contiguous arrays.
+    """
+    sizes = [c.cell.size for c in charts]
+    cells = [np.where(c.cell >= 0, c.cell + c.first, -1).ravel() for c in charts]
+
+    def rows(values: list[Floats]) -> Floats:
+        return np.array(values, dtype=np.float64).reshape(-1, 3)
+
+    return Grids(
+        origin=rows([c.origin for c in charts]),
+        u=rows([c.u for c in charts]),
+        v=rows([c.v for c in charts]),
+        normal=rows([c.normal for c in charts]),
+        spacing=np.array([c.spacing for c in charts], dtype=np.float64),
+        shape=np.array([c.cell.shape for c in charts], dtype=np.int32).reshape(-1, 2),
+        offset=np.concatenate([[0], np.cumsum(sizes)[:-1]]).astype(np.int32)
+        if sizes
+        else np.zeros(0, np.int32),
+        cell=np.concatenate(cells).astype(np.int32) if cells else np.zeros(0, np.int32),
+    )
+
+
+@njit(cache=True, nogil=True, error_model="numpy")
+def _disc_interval(px, py, dx, dy, r2):
+    """Where the line p + x d is within the disc of radius² r2 about 0; (inf, -inf) if nowhere."""
+    A = dx * dx + dy * dy
+    B = px * dx + py * dy
+    C = px * px + py * py - r2
+    disc = B * B - A * C
+    if disc < 0.0:
+        return math.inf, -math.inf
+    root = math.sqrt(disc)
+    return (-B - root) / A, (-B + root) / A
+
+
+@njit(cache=True, nogil=True, error_model="numpy")
+def _between(f0, df, low, high):
+    """Where low <= f0 + x df <= high."""
+    if df == 0.0:
+        return (-math.inf, math.inf) if low <= f0 <= high else (math.inf, -math.inf)
+    a, b = (low - f0) / df, (high - f0) / df
+    return min(a, b), max(a, b)
+
+
+@njit(cache=True, nogil=True, error_model="numpy")
+def row_interval(Q, px, py, dx, dy, rho):
+    """Where the line p + x d lies within ``rho`` of the triangle ``Q``: (first x, last x)."""
+    first, last = math.inf, -math.inf
+    for j in range(3):
+        a, b = _disc_interval(px - Q[j, 0], py - Q[j, 1], dx, dy, rho * rho)
+        first, last = min(first, a), max(last, b)
+        k = (j + 1) % 3
+        ex, ey = Q[k, 0] - Q[j, 0], Q[k, 1] - Q[j, 1]
+        L = math.hypot(ex, ey)
+        if L > 0.0:
+            ex, ey = ex / L, ey / L
+            fx, fy = px - Q[j, 0], py - Q[j, 1]
+            a1, b1 = _between(fx * ex + fy * ey, dx * ex + dy * ey, 0.0, L)
+            a2, b2 = _between(ex * fy - ey * fx, ex * dy - ey * dx, -rho, rho)
+            a, b = max(a1, a2), min(b1, b2)
+            if a <= b:
+                first, last = min(first, a), max(last, b)
+    return first, last
+
+
+@njit(cache=True, nogil=True, error_model="numpy")
+def half_width(Q, rho):
+    """Half the width of the narrowest way across the footprint of ``Q`` and the sun."""
+    longest = 0.0
+    for j in range(3):
+        k = (j + 1) % 3
+        longest = max(longest, math.hypot(Q[k, 0] - Q[j, 0], Q[k, 1] - Q[j, 1]))
+    twice = abs(
+        (Q[1, 0] - Q[0, 0]) * (Q[2, 1] - Q[0, 1]) - (Q[1, 1] - Q[0, 1]) * (Q[2, 0] - Q[0, 0])
+    )
+    return rho + (0.5 * twice / longest if longest > 0.0 else 0.0)
+
+
+@njit(cache=True, nogil=True, error_model="numpy")
+def samples_per_axis(h, width):
+    """Number of samples along a cell of size ``h`` for a footprint of this half width."""
+    return min(int(math.ceil(h / (SAMPLE_STEP * width))), MOST_SAMPLES)
+
+
+@njit(cache=True, nogil=True, error_model="numpy")
+def has_inside(Q, x, y):
+    """Whether (x, y) lies in the triangle ``Q``."""
+    w0 = (Q[0, 0] - x) * (Q[1, 1] - y) - (Q[0, 1] - y) * (Q[1, 0] - x)
+    w1 = (Q[1, 0] - x) * (Q[2, 1] - y) - (Q[1, 1] - y) * (Q[2, 0] - x)
+    w2 = (Q[2, 0] - x) * (Q[0, 1] - y) - (Q[2, 1] - y) * (Q[0, 0] - x)
+    return (w0 > 0.0 and w1 >= 0.0 and w2 >= 0.0) or (w0 < 0.0 and w1 <= 0.0 and w2 <= 0.0)
+
+
+@njit(cache=True, nogil=True, error_model="numpy")
+def edge_lines(Q, lines):
+    """Lines along the edges of ``Q``: a x + b y + c is the distance inwards, rows (a, b, c).
+
+    Returns the area of ``Q``.
+    """
+    twice = (Q[1, 0] - Q[0, 0]) * (Q[2, 1] - Q[0, 1]) - (Q[1, 1] - Q[0, 1]) * (Q[2, 0] - Q[0, 0])
+    turn = 1.0 if twice > 0.0 else -1.0
+    for j in range(3):
+        k = (j + 1) % 3
+        ex, ey = Q[k, 0] - Q[j, 0], Q[k, 1] - Q[j, 1]
+        L = math.sqrt(ex * ex + ey * ey)
+        a, b = (-turn * ey / L, turn * ex / L) if L > 0.0 else (0.0, 0.0)
+        lines[j, 0], lines[j, 1], lines[j, 2] = a, b, -(a * Q[j, 0] + b * Q[j, 1])
+    return 0.5 * abs(twice)
+
+
+@njit(cache=True, nogil=True, error_model="numpy")
+def footprint(B, k, G, c, reach, Q, grid_to_beam):
+    """Meet beam ``k`` and chart ``c``.
+
+    ``Q`` (3, 2) takes the image across the beam; ``grid_to_beam`` (3, 3) takes depth and the two
+    cross coordinates of the grid's corner (column 0) and of a step of one metre along u and v
+    (columns 1, 2). ``reach`` is the tangent of the largest disc's angular radius. Returns the
+    largest radius of the sun's image and the first and last grid row (in metres along v) that it
+    can touch; a radius below 0 where they do not meet.
+    """
+    o, n = G.origin[c], G.normal[c]
+    near, far = image_on_plane(
+        B.start[k, :3], B.direction[k, :3], B.chief[k], B.frame[k], o, n, Q
+    )
+    if near < 0.0:
+        return -1.0, 0.0, 0.0
+    for a in range(3):
+        f = B.frame[k, a]
+        grid_to_beam[a, 0] = (
+            (o[0] - B.chief[k, 0]) * f[0]
+            + (o[1] - B.chief[k, 1]) * f[1]
+            + (o[2] - B.chief[k, 2]) * f[2]
+        )
+        grid_to_beam[a, 1] = G.u[c, 0] * f[0] + G.u[c, 1] * f[1] + G.u[c, 2] * f[2]
+        grid_to_beam[a, 2] = G.v[c, 0] * f[0] + G.v[c, 1] * f[1] + G.v[c, 2] * f[2]
+    # Across the beam a metre of u is (a, c), a metre of v is (b, d): solve for v.
+    a, b = grid_to_beam[1, 1], grid_to_beam[1, 2]
+    cc, d = grid_to_beam[2, 1], grid_to_beam[2, 2]
+    det = a * d - b * cc
+    if abs(det) < 1e-9:  # the beam runs along the chart
+        return -1.0, 0.0, 0.0
+    depth_u, depth_v = grid_to_beam[0, 1], grid_to_beam[0, 2]
+    # The depth over the footprint: that of the image and of its blur, which tilts with the chart.
+    slope = math.hypot(
+        (depth_u * d - depth_v * cc) / det, (depth_v * a - depth_u * b) / det
+    )
+    rho = reach * (far + B.before[k])
+    rho = rho / max(0.05, 1.0 - slope * reach)
+    low, high = math.inf, -math.inf
+    for j in range(3):
+        x, y = Q[j, 0] - grid_to_beam[1, 0], Q[j, 1] - grid_to_beam[2, 0]
+        v = (a * y - cc * x) / det
+        low, high = min(low, v), max(high, v)
+    blur = rho * math.hypot(a, cc) / abs(det)
+    return rho, low - blur, high + blur
+
+
+@njit(cache=True, nogil=True, error_model="numpy")
+def _splat(B, factor, radii, weights, ring, chart, G, E, images):
+    Q, M, L = np.empty((3, 2)), np.empty((3, 3)), np.empty((3, 3))
+    for k in range(chart.size):
+        c = chart[k]
+        tan_radii, shares = radii[ring[k]], weights[ring[k]]
+        rho, low, high = footprint(B, k, G, c, tan_radii[-1], Q, M)
+        if rho < 0.0:
+            continue
+        n, r = G.normal[c], B.frame[k, 0]
+        cos_g = -(n[0] * r[0] + n[1] * r[1] + n[2] * r[2])
+        h, nu, nv = G.spacing[c], G.shape[c, 0], G.shape[c, 1]
+        area = edge_lines(Q, L)
+        m = samples_per_axis(h, half_width(Q, rho))
+        step = h / m
+        strength = factor[k] * cos_g / (m * m)
+        j_first = max(0, int(math.ceil(low / step - 0.5)))
+        j_last = min(nv * m - 1, int(math.floor(high / step - 0.5)))
+        for j in range(j_first, j_last + 1):
+            y = (j + 0.5) * step
+            px, py = M[1, 0] + y * M[1, 2], M[2, 0] + y * M[2, 2]
+            x_in, x_out = row_interval(Q, px, py, M[1, 1], M[2, 1], rho)
+            if x_in > x_out:
+                continue
+            i_first = max(0, int(math.ceil(x_in / step - 0.5)))
+            i_last = min(nu * m - 1, int(math.floor(x_out / step - 0.5)))
+            for i in range(i_first, i_last + 1):
+                p = G.cell[G.offset[c] + (i // m) * nv + j // m]
+                if p < 0:
+                    continue
+                x = (i + 0.5) * step
+                a, b = px + x * M[1, 1], py + x * M[2, 1]
+                D = M[0, 0] + x * M[0, 1] + y * M[0, 2] + B.before[k]
+                if D <= 0.0:
+                    continue
+                inwards = min(
+                    L[0, 0] * a + L[0, 1] * b + L[0, 2],
+                    L[1, 0] * a + L[1, 1] * b + L[1, 2],
+                    L[2, 0] * a + L[2, 1] * b + L[2, 2],
+                )
+                if inwards <= -rho:
+                    continue
+                if inwards >= rho:  # deep inside: the whole disc is covered
+                    E[p] += strength / area
+                else:
+                    E[p] += strength * flux_density(
+                        Q[0, 0] - a, Q[0, 1] - b, Q[1, 0] - a, Q[1, 1] - b,
+                        Q[2, 0] - a, Q[2, 1] - b, D, tan_radii, shares,
+                    )  # fmt: skip
+                if i % m == m // 2 and j % m == m // 2:
+                    x += (0.5 * m - m // 2 - 0.5) * step  # from the sample to the cell's middle
+                    yy = y + (0.5 * m - m // 2 - 0.5) * step
+                    a, b = M[1, 0] + x * M[1, 1] + yy * M[1, 2], M[2, 0] + x * M[2, 1] + yy * M[2, 2]
+                    if has_inside(Q, a, b):
+                        images[p] += 1
+
+
+def splat(
+    beams: Beams,
+    *,
+    factor: Floats,
+    radii: Floats,
+    weights: Floats,
+    ring: Ints,
+    chart: Ints,
+    grids: Grids,
+    load: Floats,
+    images: Ints,
+) -> None:
+    """Add the light of beams to the charts that they land on.
+
+    Parameters
+    ----------
+    beams : Beams
+        ``k`` beams, each landing wholly on one chart.
+    factor : (k,) float
+        Power of each beam; loads are in its unit per m². [m² or W]
+    radii, weights : (s, r) float
+        Concentric discs that make up the sun for ``s`` kinds of surface: tangents of their
+        angular radii, growing along a row, and their shares of the flux, which add up to 1.
+    ring : (k,) int
+        Row of ``radii`` for each beam.
+    chart : (k,) int
+        Number of the chart that each beam lands on.
+    grids : Grids
+        The charts.
+    load : (n,) float
+        Mean over each point's cell; added to. [factor's unit / m²]
+    images : (n,) int
+        Number of tubes whose image holds the middle of the cell; added to.
+    """
+    _splat(beams, factor, radii, weights, ring, chart, grids, load, images)
