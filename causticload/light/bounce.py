@@ -34,11 +34,10 @@ def _barycentric(corner, x, out):
 
 
 @njit(cache=True, nogil=True, error_model="numpy")
-def _bounce(F, R, sheet_of, B, triangle, distance, clearance, C, good):
+def _bounce(F, R, sheet_of, B, triangle, distance, C, good):
     """Reflect every ray of the beams ``B`` where it met ``triangle``; fills the beams ``C``."""
     x, n, b = np.empty(3), np.empty(3), np.empty(3)
-    for k in range(B.before.size):
-        way = 0.0
+    for k in range(good.size):
         for j in range(6):
             t = triangle[k, j]
             d = B.direction[k, j]
@@ -57,13 +56,12 @@ def _bounce(F, R, sheet_of, B, triangle, distance, clearance, C, good):
             if side * (r[0] * f[0] + r[1] * f[1] + r[2] * f[2]) <= 0.0:
                 good[k] = False
             for i in range(3):
-                C.start[k, j, i] = x[i] + side * clearance * f[i]
+                C.start[k, j, i] = x[i]
             if j < 3:
-                way += distance[k, j] / 3.0
+                C.before[k, j] = B.before[k, j] + distance[k, j]
             if j == 0:
                 for i in range(3):
                     C.side[k, i] = side * f[i]
-        C.before[k] = B.before[k] + way
         _frame_beam(C.start[k], C.direction[k], C.chief[k], C.frame[k])
         # Mirror law backwards: the chief normal halves the angle between the two directions.
         d, r = B.frame[k, 0], C.frame[k, 0]
@@ -86,6 +84,14 @@ def _bounce(F, R, sheet_of, B, triangle, distance, clearance, C, good):
             C.power[k, 2 * band + 1] = lookup(R[row, band, 1], cos_theta) * (
                 (1.0 - c2) * s + c2 * p
             )
+
+
+def _from_start(F: Facets, beams: Beams, triangle: Ints) -> Floats:
+    """Distance along each ray from its true start to the plane of the triangle met, (k, 6)."""
+    n = F.face_normal[triangle]
+    height = np.einsum("kji,kji->kj", F.corner[triangle, 0] - beams.start, n)
+    with np.errstate(divide="ignore", invalid="ignore"):  # misses are sorted out by the caller
+        return height / np.einsum("kji,kji->kj", beams.direction, n)
 
 
 def bounce(
@@ -114,7 +120,7 @@ def bounce(
     tracer : Tracer
         Finds what rays meet.
     clearance_m : float
-        How far above the facet rays start. [m]
+        How far above the facet rays are traced from. [m]
 
     Returns
     -------
@@ -125,11 +131,11 @@ def bounce(
     sheet : (k,) int
         Row of the tables of the mirror met.
     """
-    k = len(beams.before)
-    triangle, distance = tracer.first_hit(
-        beams.start.reshape(-1, 3), beams.direction.reshape(-1, 3)
-    )
-    triangle, distance = triangle.reshape(k, 6), distance.reshape(k, 6)
+    k = len(beams.chief)
+    origin = beams.start + clearance_m * beams.side[:, None]
+    triangle, _ = tracer.first_hit(origin.reshape(-1, 3), beams.direction.reshape(-1, 3))
+    triangle = triangle.reshape(k, 6)
+    distance = _from_start(F, beams, triangle)
     unit = np.where(triangle >= 0, meanings.front[triangle], 0)
     mirror = np.where(triangle >= 0, sheet_of[triangle], -1)
     whole = (mirror >= 0).all(axis=1) & (unit == unit[:, :1]).all(axis=1)
@@ -137,6 +143,6 @@ def bounce(
     distance = np.where(whole[:, None], distance, 1.0)
     bounced = empty_beams(k)
     _bounce(
-        F, R, np.maximum(sheet_of, 0), beams, triangle, distance, clearance_m, bounced, whole
+        F, R, np.maximum(sheet_of, 0), beams, triangle, distance, bounced, whole
     )  # fmt: skip
     return bounced, whole, sheet_of[triangle[:, 0]]

@@ -42,10 +42,14 @@ def make_facets(scene: Scene) -> Facets:
     T = np.ascontiguousarray(scene.triangles, dtype=np.float64)
     cross = np.cross(T[:, 1] - T[:, 0], T[:, 2] - T[:, 0])
     twice = np.linalg.norm(cross, axis=1)
+    face_normal = np.ascontiguousarray(cross / twice[:, None])
+    corner_normal = np.ascontiguousarray(scene.corner_normals, dtype=np.float64)
+    # Which side is "up" is the winding's business; a normal that points below it is turned over.
+    below = np.einsum("mji,mi->mj", corner_normal, face_normal) < 0.0
     return Facets(
         corner=T,
-        face_normal=np.ascontiguousarray(cross / twice[:, None]),
-        corner_normal=np.ascontiguousarray(scene.corner_normals, dtype=np.float64),
+        face_normal=face_normal,
+        corner_normal=np.where(below[:, :, None], -corner_normal, corner_normal),
         area=0.5 * twice,
         panel=np.ascontiguousarray(scene.panel, dtype=np.int32),
     )

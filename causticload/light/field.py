@@ -212,13 +212,14 @@ class _Walk:
     def _light(self, generation: Generation) -> tuple[Generation, Beams]:
         """Light a generation and leave out what is dark."""
         lit = self.lit
-        beams, outcome = light_tubes(
-            lit.F, lit.R, generation.tubes, sun_direction=self.s, clearance_m=lit.clearance_m
-        )
+        beams, outcome = light_tubes(lit.F, lit.R, generation.tubes, sun_direction=self.s)
         sun = np.where(outcome == TURNED_AWAY, 0.0, generation.sun)
         asks = sun == UNKNOWN
         if asks.any():
-            seen = count_sun(beams.take(asks), tracer=lit.tracer, sun_direction=self.s)
+            seen = count_sun(
+                beams.take(asks), tracer=lit.tracer, sun_direction=self.s,
+                clearance_m=lit.clearance_m,
+            )  # fmt: skip
             self.field.rays += 4 * len(seen)
             sun[asks] = seen / 4.0
         generation = generation._replace(sun=sun)
@@ -239,8 +240,9 @@ class _Walk:
         lit = self.lit
         self.field.rays += 4 * len(ring)
         return find_targets(
-            beams, F=lit.F, meanings=lit.meanings, tracer=lit.tracer, reach=self.reach, ring=ring
-        )
+            beams, F=lit.F, meanings=lit.meanings, tracer=lit.tracer, reach=self.reach, ring=ring,
+            clearance_m=lit.clearance_m,
+        )  # fmt: skip
 
     # The ledger -------------------------------------------------------------------------------
 
@@ -290,7 +292,7 @@ class _Walk:
         """Return the edge to halve, and whether three corners describe the image well enough."""
         G = self.lit.grids
         error, length, depth = image_errors(beams, o=G.origin[chart], n=G.normal[chart])
-        rho = (depth + beams.before) * self.reach[ring]
+        rho = (depth + beams.longest) * self.reach[ring]
         worst = error.max(axis=1)
         fine = worst <= np.maximum(LINEAR * rho, LINEAR_FLOOR_M)
         # A ray of the halves may pass the plane by where the rim rays did not: leave it whole.
@@ -337,7 +339,7 @@ class _Walk:
         _, length, z = image_errors(
             beams.take(beam), o=G.origin[chart], n=G.normal[chart]
         )
-        blurred = length.max(axis=1) <= self.reach[ring[beam]] * (z + beams.before[beam])
+        blurred = length.max(axis=1) <= self.reach[ring[beam]] * (z + beams.longest[beam])
         dust = np.ones(len(ring), bool)
         np.logical_and.at(dust, beam, blurred | (z < 0.0))
         return (total <= SETTLE_SAMPLES) | dust

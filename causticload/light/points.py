@@ -19,14 +19,14 @@ from causticload.light.field import Bounced, halve_generation
 from causticload.light.field import Generation as _Generation
 from causticload.light.overlap import flux_density
 from causticload.light.prepare import LitScene
-from causticload.light.settle import blocked_between, nearest_in_triangle
-from causticload.light.splat import has_inside
+from causticload.light.settle import blocked_between, nearest_in_triangle, reflecting_points
+from causticload.light.splat import has_inside, path_at, path_plane
 from causticload.light.tubes import LIT, Beams, Tubes, light_tubes
 from causticload.scene.model import Bools, Floats, Ints
 
 # Finer than for grids: a peak is read off to the last per cent.
 FINE = 0.05
-FINE_FLOOR_M = 0.0005
+FINE_FLOOR_M = 1e-6  # what no double can make finer, at the distances of a town
 MOST_HALVINGS = 16
 
 
@@ -71,10 +71,10 @@ def _section(start, direction, chief, frame, z, q):
 
 
 @njit(cache=True, nogil=True, error_model="numpy")
-def _approach(B, C, radius, reach, ring, near, error, edge):
+def _approach(B, before, C, radius, reach, ring, near, error, edge):
     """Tell which beams pass within ``radius`` of ``C``, and how well three rays describe them."""
     q, m, far = np.empty((3, 2)), np.empty((3, 2)), np.empty((3, 2))
-    for k in range(B.before.size):
+    for k in range(near.size):
         f = B.frame[k]
         z = x = y = 0.0
         for i in range(3):
@@ -100,18 +100,18 @@ def _approach(B, C, radius, reach, ring, near, error, edge):
                 worst, edge[k] = e, j
             spread = max(spread, math.hypot(far[j, 0] - q[j, 0], far[j, 1] - q[j, 1]))
             size = max(size, math.hypot(q[j, 0] - mx, q[j, 1] - my))
-        rho = reach[ring[k]] * (max(z, 0.0) + radius + B.before[k])
+        rho = reach[ring[k]] * (max(z, 0.0) + radius + before[k])
         within = size + 2.0 * bulge + spread + rho + radius
         if math.hypot(x - mx, y - my) <= within:
-            near[k], error[k] = True, worst / max(rho, 1e-12)
+            near[k], error[k] = True, worst / max(rho, FINE_FLOOR_M / FINE)
 
 
 @njit(cache=True, nogil=True, error_model="numpy")
 def _gather(B, factor, radii, weights, ring, P, N, tube, point, load, weight, whole):
     """Write every contribution of a beam to a point; without room, count the pairs at most."""
-    q, w = np.empty((3, 2)), np.empty(3)
+    q, w, W = np.empty((3, 2)), np.empty(3), np.empty(5)
     found = 0
-    for k in range(B.before.size):
+    for k in range(factor.size):
         f, r = B.frame[k], radii[ring[k]]
         for p in range(len(P)):
             z = x = y = 0.0
@@ -126,7 +126,8 @@ def _gather(B, factor, radii, weights, ring, P, N, tube, point, load, weight, wh
             if z <= 0.0 or cos_g <= 0.0:
                 continue
             _section(B.start[k, :3], B.direction[k, :3], B.chief[k], f, z, q)
-            rho = r[-1] * (z + B.before[k])
+            path_plane(B, k, q, W)
+            rho = r[-1] * (z + W[4])
             if (
                 min(q[0, 0], q[1, 0], q[2, 0]) > x + rho
                 or max(q[0, 0], q[1, 0], q[2, 0]) < x - rho
@@ -139,7 +140,7 @@ def _gather(B, factor, radii, weights, ring, P, N, tube, point, load, weight, wh
                 continue
             density = flux_density(
                 q[0, 0] - x, q[0, 1] - y, q[1, 0] - x, q[1, 1] - y, q[2, 0] - x, q[2, 1] - y,
-                z + B.before[k], r, weights[ring[k]],
+                path_at(W, x, y, z), r, weights[ring[k]],
             )  # fmt: skip
             if density <= 0.0:
                 continue
@@ -210,7 +211,7 @@ class _Question:
     def _approach(self, beams: Beams, ring: Ints) -> tuple[Bools, Floats, Ints]:
         n = len(ring)
         near, error, edge = np.empty(n, bool), np.empty(n), np.empty(n, np.int64)
-        _approach(beams, self.middle, self.radius, self.reach, ring, near, error, edge)
+        _approach(beams, beams.longest, self.middle, self.radius, self.reach, ring, near, error, edge)
         return near, error, edge
 
     def direct(self) -> Parts:
@@ -221,9 +222,7 @@ class _Question:
         work = _Generation(base, np.ones(n), np.zeros(n, np.int32), np.zeros(n, np.int32))
         tubes: list[Tubes] = []
         while len(work.age):
-            beams, outcome = light_tubes(
-                lit.F, lit.R, work.tubes, sun_direction=self.s, clearance_m=lit.clearance_m
-            )
+            beams, outcome = light_tubes(lit.F, lit.R, work.tubes, sun_direction=self.s)
             near, error, edge = self._approach(beams, work.tubes.sheet)
             near &= outcome == LIT
             fine = (error <= FINE) | (work.age >= MOST_HALVINGS)
@@ -231,9 +230,7 @@ class _Question:
             rest = near & ~fine
             work = halve_generation(work.take(rest), edge[rest])
         ready = Tubes(*(np.concatenate(a) for a in zip(*tubes, strict=True)))
-        beams, _ = light_tubes(
-            lit.F, lit.R, ready, sun_direction=self.s, clearance_m=lit.clearance_m
-        )
+        beams, _ = light_tubes(lit.F, lit.R, ready, sun_direction=self.s)
         kept = 1.0 - lit.scatter[ready.sheet]
         return self._gather(beams, None, ready, kept, ready.sheet)
 
@@ -263,12 +260,12 @@ class _Question:
         out = room(max(1, _gather(*args, *room(0))))
         used = _gather(*args, *out)
         tube, point, load, weight, whole = (a[:used] for a in out)
-        X = np.einsum("qj,qji->qi", weight, beams.start[tube, :3])
+        X = reflecting_points(beams, tube, weight, lit.clearance_m)
         P = self.P[point] + lit.clearance_m * self.N[point]
         free = ~blocked_between(lit.tracer, P, X)
         first = X
         if sources is not None:
-            first = np.einsum("qj,qji->qi", weight, sources.start[tube, :3])
+            first = reflecting_points(sources, tube, weight, lit.clearance_m)
             free[free] = ~blocked_between(lit.tracer, X[free], first[free])
         ask = np.flatnonzero(free)
         to_sun = np.ascontiguousarray(np.broadcast_to(self.s, (len(ask), 3)))
@@ -286,7 +283,7 @@ class _Question:
             visible=load * np.divide(visible, solar, out=np.zeros_like(solar), where=solar > 0),
             direction=way / length[:, None],
             reflectance=solar * kept[tube] / crossing[tube],
-            distance=length + beams.before[tube],
+            distance=length + beams.longest[tube],
             whole=whole,
             second=np.full(len(tube), sources is not None),
         )

@@ -36,7 +36,10 @@ class LitScene:
     scatter: Floats  # (k,) share of the mirrored light that leaves the mirror direction
     first_sheet: Floats  # (k,) 1 for the sheet that enters what its facet takes in, else 0
     sheet_of: Ints  # (m,) sheet met by a second reflection, -1 off reflectors
+    points: Floats  # (n, 3) m, local
+    point_normals: Floats  # (n, 3) unit
     point_areas: Floats  # (n,) m²
+    point_surface: Ints  # (n,) number of the surface
     mirror_point: Bools  # (n,) the point lies on a reflector
     clearance_m: float
     _rings: dict[float, tuple[Floats, Floats]] = field(default_factory=dict)
@@ -95,7 +98,9 @@ def prepare(
     )
     grids = make_grids(scene.charts)
     mirrors = np.array([("reflector" in s.roles) for s in scene.surfaces], dtype=bool)
-    on_mirror = [np.full(len(c.areas), mirrors[c.surface]) for c in scene.charts]
+    counts = [len(c.areas) for c in scene.charts]
+    point_surface = np.repeat([c.surface for c in scene.charts], counts).astype(np.int32)
+    normals = np.array([c.normal for c in scene.charts], dtype=float).reshape(-1, 3)
     size = float(np.ptp(scene.triangles.reshape(-1, 3), axis=0).max()) if len(F.area) else 1.0
     return LitScene(
         scene=scene,
@@ -110,8 +115,11 @@ def prepare(
         scatter=tables.diffuse_fraction,
         first_sheet=tables.enters,
         sheet_of=sheet_of,
+        points=np.concatenate([c.points for c in scene.charts] or [np.zeros((0, 3))]),
+        point_normals=np.repeat(normals, counts, axis=0),
         point_areas=np.concatenate([c.areas for c in scene.charts] or [np.zeros(0)]),
-        mirror_point=np.concatenate(on_mirror or [np.zeros(0, bool)]),
+        point_surface=point_surface,
+        mirror_point=mirrors[point_surface],
         # Embree works in single precision: stay clear by more than its last digit.
         clearance_m=max(1e-3, 4e-7 * size),
     )

@@ -15,7 +15,14 @@ from numba import njit
 
 from causticload.light.bvh import Tracer
 from causticload.light.overlap import flux_density
-from causticload.light.splat import Grids, footprint, half_width, row_interval, samples_per_axis
+from causticload.light.splat import (
+    Grids,
+    footprint,
+    half_width,
+    path_at,
+    row_interval,
+    samples_per_axis,
+)
 from causticload.light.tubes import Beams
 from causticload.scene.model import Bools, Floats, Ints
 
@@ -58,12 +65,12 @@ def nearest_in_triangle(Q, x, y, out):
 @njit(cache=True, nogil=True, error_model="numpy")
 def _walk(B, beam, factor, radii, weights, ring, chart, G, S):
     """Write the samples in the footprints into ``S``; without room there, count them at most."""
-    Q, M, w = np.empty((3, 2)), np.empty((3, 3)), np.empty(3)
+    Q, M, w, W = np.empty((3, 2)), np.empty((3, 3)), np.empty(3), np.empty(5)
     found = 0
     for pair in range(chart.size):
         k, c = beam[pair], chart[pair]
         tan_radii, shares = radii[ring[k]], weights[ring[k]]
-        rho, low, high = footprint(B, k, G, c, tan_radii[-1], Q, M)
+        rho, low, high = footprint(B, k, G, c, tan_radii[-1], Q, M, W)
         if rho < 0.0:
             continue
         n, r = G.normal[c], B.frame[k, 0]
@@ -87,10 +94,10 @@ def _walk(B, beam, factor, radii, weights, ring, chart, G, S):
             for i in range(i_first, i_last + 1):
                 p = G.cell[G.offset[c] + (i // m) * nv + j // m]
                 x = (i + 0.5) * step
-                D = M[0, 0] + x * M[0, 1] + y * M[0, 2] + B.before[k]
+                a, b = px + x * M[1, 1], py + x * M[2, 1]
+                D = path_at(W, a, b, M[0, 0] + x * M[0, 1] + y * M[0, 2])
                 if p < 0 or D <= 0.0:
                     continue
-                a, b = px + x * M[1, 1], py + x * M[2, 1]
                 density = flux_density(
                     Q[0, 0] - a, Q[0, 1] - b, Q[1, 0] - a, Q[1, 1] - b, Q[2, 0] - a, Q[2, 1] - b,
                     D, tan_radii, shares,
@@ -146,11 +153,11 @@ def count_samples(
 
 @njit(cache=True, nogil=True, error_model="numpy")
 def _count(B, beam, radii, ring, chart, G):
-    Q, M = np.empty((3, 2)), np.empty((3, 3))
+    Q, M, W = np.empty((3, 2)), np.empty((3, 3)), np.empty(5)
     count = np.zeros(chart.size, np.int32)
     for pair in range(chart.size):
         k, c = beam[pair], chart[pair]
-        rho, low, high = footprint(B, k, G, c, radii[ring[k]][-1], Q, M)
+        rho, low, high = footprint(B, k, G, c, radii[ring[k]][-1], Q, M, W)
         if rho < 0.0:
             continue
         step = G.spacing[c] / samples_per_axis(G.spacing[c], half_width(Q, rho))
@@ -208,16 +215,41 @@ def settle(
     S = Samples(*(a[:used] for a in S))
     row = beam[S.pair]
     P = S.place + clearance_m * grids.normal[chart[S.pair]]
-    X = np.einsum("qj,qji->qi", S.weight, beams.start[row, :3])
+    X = reflecting_points(beams, row, S.weight, clearance_m)
     free = ~blocked_between(tracer, P, X)
     if sources is not None:
-        X1 = np.einsum("qj,qji->qi", S.weight, sources.start[row, :3])
+        X1 = reflecting_points(sources, row, S.weight, clearance_m)
         free[free] = ~blocked_between(tracer, X[free], X1[free])
         X = X1
     ask = np.flatnonzero(free & ~sun_clear[row])
     to_sun = np.broadcast_to(sun_direction, (len(ask), 3))
     free[ask] = ~tracer.occluded(X[ask], np.ascontiguousarray(to_sun))
     np.add.at(load, S.point[free], S.load[free])
+
+
+def reflecting_points(
+    beams: Beams, beam: Ints, weight: Floats, clearance_m: float
+) -> Floats:
+    """Points of beams' starts, clear of their facets.
+
+    Parameters
+    ----------
+    beams : Beams
+        Any number of beams.
+    beam : (q,) int
+        Row of the beam.
+    weight : (q, 3) float
+        Barycentric coordinates between the starts of its corner rays.
+    clearance_m : float
+        How far above the facet the points are raised. [m]
+
+    Returns
+    -------
+    places : (q, 3) float
+        The points. [m]
+    """
+    on_facet = np.einsum("qj,qji->qi", weight, beams.start[beam, :3])
+    return on_facet + clearance_m * beams.side[beam]
 
 
 def blocked_between(tracer: Tracer, P: Floats, X: Floats) -> Bools:

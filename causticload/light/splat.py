@@ -164,12 +164,52 @@ def edge_lines(Q, lines):
 
 
 @njit(cache=True, nogil=True, error_model="numpy")
-def footprint(B, k, G, c, reach, Q, grid_to_beam):
+def path_plane(B, k, Q, plane):
+    """Lay a plane through what each corner ray's path is longer than its depth.
+
+    A sample at (x, y) across the beam and depth z has the path z + a + b x + c y from where its
+    light was first reflected, with a, b, c = ``plane[:3]``, within ``plane[3:]``. Without it two
+    tubes of one tilted pane would blur the seam between them differently.
+    """
+    f = B.frame[k, 0]
+    low, high, mean = math.inf, -math.inf, 0.0
+    lag0 = lag1 = lag2 = 0.0
+    for j in range(3):
+        w = B.before[k, j]
+        for i in range(3):
+            w -= (B.start[k, j, i] - B.chief[k, i]) * f[i]
+        low, high = min(low, w), max(high, w)
+        mean += w / 3.0
+        if j == 0:
+            lag0 = w
+        elif j == 1:
+            lag1 = w
+        else:
+            lag2 = w
+    x1, y1 = Q[1, 0] - Q[0, 0], Q[1, 1] - Q[0, 1]
+    x2, y2 = Q[2, 0] - Q[0, 0], Q[2, 1] - Q[0, 1]
+    det = x1 * y2 - y1 * x2
+    plane[0], plane[1], plane[2], plane[3], plane[4] = mean, 0.0, 0.0, low, high
+    if abs(det) > 1e-3 * max(x1 * x1 + y1 * y1, x2 * x2 + y2 * y2):
+        b = ((lag1 - lag0) * y2 - (lag2 - lag0) * y1) / det
+        c = ((lag2 - lag0) * x1 - (lag1 - lag0) * x2) / det
+        plane[0], plane[1], plane[2] = lag0 - b * Q[0, 0] - c * Q[0, 1], b, c
+
+
+@njit(cache=True, nogil=True, error_model="numpy")
+def path_at(plane, x, y, z):
+    """Path of a sample at (x, y) across the beam and depth ``z``."""
+    lag = plane[0] + plane[1] * x + plane[2] * y
+    return z + min(plane[4], max(plane[3], lag))
+
+
+@njit(cache=True, nogil=True, error_model="numpy")
+def footprint(B, k, G, c, reach, Q, grid_to_beam, plane):
     """Meet beam ``k`` and chart ``c``.
 
     ``Q`` (3, 2) takes the image across the beam; ``grid_to_beam`` (3, 3) takes depth and the two
     cross coordinates of the grid's corner (column 0) and of a step of one metre along u and v
-    (columns 1, 2). ``reach`` is the tangent of the largest disc's angular radius. Returns the
+    (columns 1, 2); ``plane`` (5,) what :func:`path_plane` lays. ``reach`` is the tangent of the largest disc's angular radius. Returns the
     largest radius of the sun's image and the first and last grid row (in metres along v) that it
     can touch; a radius below 0 where they do not meet.
     """
@@ -199,7 +239,8 @@ def footprint(B, k, G, c, reach, Q, grid_to_beam):
     slope = math.hypot(
         (depth_u * d - depth_v * cc) / det, (depth_v * a - depth_u * b) / det
     )
-    rho = reach * (far + B.before[k])
+    path_plane(B, k, Q, plane)
+    rho = reach * (far + plane[4])
     rho = rho / max(0.05, 1.0 - slope * reach)
     low, high = math.inf, -math.inf
     for j in range(3):
@@ -212,11 +253,11 @@ def footprint(B, k, G, c, reach, Q, grid_to_beam):
 
 @njit(cache=True, nogil=True, error_model="numpy")
 def _splat(B, factor, radii, weights, ring, chart, G, E, images):
-    Q, M, L = np.empty((3, 2)), np.empty((3, 3)), np.empty((3, 3))
+    Q, M, L, W = np.empty((3, 2)), np.empty((3, 3)), np.empty((3, 3)), np.empty(5)
     for k in range(chart.size):
         c = chart[k]
         tan_radii, shares = radii[ring[k]], weights[ring[k]]
-        rho, low, high = footprint(B, k, G, c, tan_radii[-1], Q, M)
+        rho, low, high = footprint(B, k, G, c, tan_radii[-1], Q, M, W)
         if rho < 0.0:
             continue
         n, r = G.normal[c], B.frame[k, 0]
@@ -242,7 +283,7 @@ def _splat(B, factor, radii, weights, ring, chart, G, E, images):
                     continue
                 x = (i + 0.5) * step
                 a, b = px + x * M[1, 1], py + x * M[2, 1]
-                D = M[0, 0] + x * M[0, 1] + y * M[0, 2] + B.before[k]
+                D = path_at(W, a, b, M[0, 0] + x * M[0, 1] + y * M[0, 2])
                 if D <= 0.0:
                     continue
                 inwards = min(

@@ -76,12 +76,12 @@ def _codes(triangle, direction, face_normal, front, back, out):
 
 
 @njit(cache=True, nogil=True, error_model="numpy")
-def _blurred_rays(B, depth, reach, ring, origin, direction):
+def _blurred_rays(B, depth, reach, ring, clearance, origin, direction):
     """Rays from the corners to the rim of the footprint at ``depth`` along the chief ray."""
     q = np.empty((3, 2))
     for k in range(depth.size):
         z = depth[k] if depth[k] < math.inf else FAR
-        rho = (z + B.before[k]) * reach[ring[k]]
+        rho = (z + max(B.before[k, 0], B.before[k, 1], B.before[k, 2])) * reach[ring[k]]
         f = B.frame[k]
         mx, my = 0.0, 0.0
         for j in range(3):
@@ -114,6 +114,7 @@ def _blurred_rays(B, depth, reach, ring, origin, direction):
             norm = 0.0
             for i in range(3):
                 start = B.start[k, j, i] + INSET * (B.chief[k, i] - B.start[k, j, i])
+                start += clearance * B.side[k, i]
                 origin[k, j, i] = start
                 d = B.chief[k, i] + z * f[0, i] + tx * f[1, i] + ty * f[2, i] - start
                 direction[k, j, i] = d
@@ -124,7 +125,8 @@ def _blurred_rays(B, depth, reach, ring, origin, direction):
 
 
 def find_targets(
-    beams: Beams, *, F: Facets, meanings: Meanings, tracer: Tracer, reach: Floats, ring: Ints
+    beams: Beams, *, F: Facets, meanings: Meanings, tracer: Tracer, reach: Floats, ring: Ints,
+    clearance_m: float,
 ) -> tuple[Ints, Ints]:
     """Send each beam's chief ray and three rays to the rim of its footprint.
 
@@ -142,6 +144,8 @@ def find_targets(
         Tangent of the angular radius of the sun's largest disc for each kind of surface.
     ring : (k,) int
         Row of ``reach`` for each beam.
+    clearance_m : float
+        How far above the facet rays are traced from. [m]
 
     Returns
     -------
@@ -150,15 +154,15 @@ def find_targets(
     triangle : (k, 4) int
         Numbers of the triangles met, -1 for none.
     """
-    k = len(beams.before)
+    k = len(beams.chief)
     triangle = np.empty((k, 4), np.int32)
     direction = np.empty((k, 4, 3))
     direction[:, 3] = beams.frame[:, 0]
     triangle[:, 3], depth = tracer.first_hit(
-        beams.chief, np.ascontiguousarray(beams.frame[:, 0])
+        beams.chief + clearance_m * beams.side, np.ascontiguousarray(beams.frame[:, 0])
     )
     origin, rim = np.empty((k, 3, 3)), np.empty((k, 3, 3))
-    _blurred_rays(beams, depth, reach, ring, origin, rim)
+    _blurred_rays(beams, depth, reach, ring, clearance_m, origin, rim)
     direction[:, :3] = rim
     hit, _ = tracer.first_hit(origin.reshape(-1, 3), rim.reshape(-1, 3))
     triangle[:, :3] = hit.reshape(k, 3)
@@ -170,7 +174,9 @@ def find_targets(
     return code.reshape(k, 4), triangle
 
 
-def count_sun(beams: Beams, *, tracer: Tracer, sun_direction: Floats) -> Ints:
+def count_sun(
+    beams: Beams, *, tracer: Tracer, sun_direction: Floats, clearance_m: float
+) -> Ints:
     """Count how many of four points of each beam's start see the sun.
 
     Parameters
@@ -181,16 +187,19 @@ def count_sun(beams: Beams, *, tracer: Tracer, sun_direction: Floats) -> Ints:
         Finds what rays meet.
     sun_direction : (3,) float
         Unit vector to the sun.
+    clearance_m : float
+        How far above the facet rays are traced from. [m]
 
     Returns
     -------
     seen : (k,) int
         0 to 4.
     """
-    k = len(beams.before)
+    k = len(beams.chief)
     origin = np.empty((k, 4, 3))
     origin[:, 3] = beams.chief
     origin[:, :3] = beams.start[:, :3] + INSET * (beams.chief[:, None] - beams.start[:, :3])
+    origin += clearance_m * beams.side[:, None]
     to_sun = np.ascontiguousarray(np.broadcast_to(sun_direction, (4 * k, 3)))
     hidden = tracer.occluded(origin.reshape(-1, 3), to_sun)
     return 4 - hidden.reshape(k, 4).sum(axis=1).astype(np.int32)

@@ -46,7 +46,7 @@ class Beams(NamedTuple):
     side: Floats  # (n, 3) unit normal of the facet left last, on the side of the light
     chief: Floats  # (n, 3) m, middle of the corner rays' starts
     frame: Floats  # (n, 3, 3) unit: chief direction, and two axes across it
-    before: Floats  # (n,) m, path from the first reflector to the last one
+    before: Floats  # (n, 3) m, path from the first reflector to each corner ray's start
     power: Floats  # (n, 4) m²
     s_axis: Floats  # (n, 3) unit
     cos_incidence: Floats  # (n,)
@@ -54,6 +54,11 @@ class Beams(NamedTuple):
     def take(self, index: Ints | Bools) -> Beams:
         """Return the beams at ``index``."""
         return Beams(*(a[index] for a in self))
+
+    @property
+    def longest(self) -> Floats:
+        """Longest path before the start, (n,). [m]"""
+        return self.before.max(axis=1)
 
     @property
     def solar(self) -> Floats:
@@ -80,7 +85,7 @@ def empty_beams(n: int) -> Beams:
         side=np.empty((n, 3)),
         chief=np.empty((n, 3)),
         frame=np.empty((n, 3, 3)),
-        before=np.zeros(n),
+        before=np.zeros((n, 3)),
         power=np.zeros((n, 4)),
         s_axis=np.zeros((n, 3)),
         cos_incidence=np.zeros(n),
@@ -212,7 +217,7 @@ def _s_axis(d, n, out):
 
 
 @njit(cache=True, nogil=True, error_model="numpy")
-def _light_tubes(F, R, T, s, clearance, B, outcome):
+def _light_tubes(F, R, T, s, B, outcome):
     """Light each tube by the sun in direction ``s``; fills the beams ``B`` and ``outcome``."""
     n, d, x = np.empty(3), np.empty(3), np.empty(3)
     for i in range(3):
@@ -241,7 +246,7 @@ def _light_tubes(F, R, T, s, clearance, B, outcome):
             if side * (r[0] * f[0] + r[1] * f[1] + r[2] * f[2]) <= 0.0 and outcome[k] == LIT:
                 outcome[k] = GRAZES
             for i in range(3):
-                B.start[k, j, i] = x[i] + side * clearance * f[i]
+                B.start[k, j, i] = x[i]
         for i in range(3):
             B.side[k, i] = side * f[i]
         _frame_beam(B.start[k], B.direction[k], B.chief[k], B.frame[k])
@@ -252,7 +257,7 @@ def _light_tubes(F, R, T, s, clearance, B, outcome):
         cos_theta = min(1.0, abs(n[0] * s[0] + n[1] * s[1] + n[2] * s[2]))
         _s_axis(d, n, B.s_axis[k])
         B.cos_incidence[k] = cos_theta
-        B.before[k] = 0.0
+        B.before[k, :] = 0.0
         crossing = T.area[k] * abs(cos_face)
         for band in range(2):
             for pol in range(2):
@@ -262,7 +267,7 @@ def _light_tubes(F, R, T, s, clearance, B, outcome):
 
 
 def light_tubes(
-    F: Facets, R: Floats, tubes: Tubes, *, sun_direction: Floats, clearance_m: float
+    F: Facets, R: Floats, tubes: Tubes, *, sun_direction: Floats
 ) -> tuple[Beams, Ints]:
     """Light tubes by the sun.
 
@@ -276,8 +281,6 @@ def light_tubes(
         ``n`` tubes.
     sun_direction : (3,) float
         Unit vector to the sun, scene frame.
-    clearance_m : float
-        How far above the facet rays start, so that they do not meet it. [m]
 
     Returns
     -------
@@ -291,7 +294,7 @@ def light_tubes(
     beams = empty_beams(n)
     outcome = np.empty(n, np.int32)
     s = np.ascontiguousarray(sun_direction, dtype=np.float64)
-    _light_tubes(F, R, tubes, s, clearance_m, beams, outcome)
+    _light_tubes(F, R, tubes, s, beams, outcome)
     return beams, outcome
 
 
@@ -325,7 +328,7 @@ def image_on_plane(start, direction, chief, frame, o, n, Q):
 @njit(cache=True, nogil=True, error_model="numpy")
 def _image_errors(B, o, n, error, longest, depth):
     Q, M = np.empty((3, 2)), np.empty((3, 2))
-    for k in range(B.before.size):
+    for k in range(depth.size):
         near, far = image_on_plane(
             B.start[k, :3], B.direction[k, :3], B.chief[k], B.frame[k], o[k], n[k], Q
         )
@@ -364,7 +367,7 @@ def image_errors(beams: Beams, *, o: Floats, n: Floats) -> tuple[Floats, Floats,
     depth : (k,) float
         Distance to the image along the chief ray; -1 where a ray misses the plane's front. [m]
     """
-    k = len(beams.before)
+    k = len(beams.chief)
     error, length, depth = np.zeros((k, 3)), np.zeros((k, 3)), np.empty(k)
     _image_errors(
         beams, np.ascontiguousarray(o, dtype=float), np.ascontiguousarray(n, dtype=float),

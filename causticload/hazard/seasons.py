@@ -1,0 +1,149 @@
+"""Seasons: episodes that come back day after day, told in dates and clock hours."""
+
+from __future__ import annotations
+
+from collections.abc import Sequence
+from dataclasses import replace
+from datetime import date, datetime, timedelta, timezone
+from zoneinfo import ZoneInfo
+
+import numpy as np
+from scipy import sparse
+from scipy.sparse.csgraph import connected_components
+
+from causticload.hazard.findings import Episode, Season
+
+# Two episodes on neighbouring days are the same thing if their peaks are no further apart.
+SAME_PLACE_M = 15.0
+SAME_HOUR_MIN = 45.0
+
+
+def severity(item: Episode | Season) -> tuple[float, ...]:
+    """Rank for sorting: people before things, then minutes in the year, then excess of the peak.
+
+    Parameters
+    ----------
+    item : Episode or Season
+        What to rank.
+
+    Returns
+    -------
+    key : tuple of float
+        Smaller is worse.
+    """
+    people = 0.0 if item.protects.startswith("people") else 1.0
+    minutes = item.minutes_per_year if isinstance(item, Season) else item.minutes
+    return (people, -minutes, -item.peak)
+
+
+def make_seasons(
+    episodes: Sequence[Episode], *, zone: str, day_stride: int
+) -> tuple[list[Episode], list[Season]]:
+    """Number episodes, worst first, and gather them into seasons.
+
+    Parameters
+    ----------
+    episodes : sequence of Episode
+        The year's episodes, in any order.
+    zone : str
+        IANA time zone of the site.
+    day_stride : int
+        Days from one representative day to the next.
+
+    Returns
+    -------
+    episodes : list of Episode
+        Numbered from 1, worst first, each with the number of its season.
+    seasons : list of Season
+        Numbered from 1, worst first.
+    """
+    worst_first = sorted(
+        episodes, key=lambda e: (*severity(e), e.day.toordinal(), e.receiver, str(e.start))
+    )
+    numbered = [replace(e, number=i) for i, e in enumerate(worst_first, start=1)]
+    label = _labels(numbered, day_stride)
+    groups: list[list[Episode]] = [[] for _ in range(int(label.max(initial=-1)) + 1)]
+    for episode, k in zip(numbered, label, strict=True):
+        groups[k].append(episode)
+    tz = ZoneInfo(zone)
+    seasons = sorted((_season(g, tz, day_stride) for g in groups), key=severity)
+    seasons = [replace(s, number=i) for i, s in enumerate(seasons, start=1)]
+    of_episode = {e: s.number for s in seasons for e in s.episodes}
+    return [replace(e, season=of_episode[e.number]) for e in numbered], seasons
+
+
+def _labels(episodes: Sequence[Episode], day_stride: int) -> np.ndarray:
+    """Number of the season of each episode, from 0."""
+    n = len(episodes)
+    heads, tails = [], []
+    by_place: dict[tuple[str, str], list[int]] = {}
+    for i, e in enumerate(episodes):
+        by_place.setdefault((e.criterion, e.receiver), []).append(i)
+    for members in by_place.values():
+        day = np.array([episodes[i].day.toordinal() for i in members])
+        mirror = np.array(
+            [e.mirror_day.toordinal() if (e := episodes[i]).mirror_day else -1 for i in members]
+        )
+        hour = np.array([_minute_of_day(episodes[i].peak_time) for i in members])
+        place = np.array([_peak_place(episodes[i]) for i in members])
+        near = np.linalg.norm(place[:, None] - place[None], axis=2) <= SAME_PLACE_M
+        gap = np.abs(hour[:, None] - hour[None])
+        near &= np.minimum(gap, 1440.0 - gap) <= SAME_HOUR_MIN
+        # Neighbouring representative days, or a day and its mirror day.
+        beside = np.abs(day[:, None] - day[None]) <= day_stride + 1
+        near &= beside | (day[:, None] == mirror[None])
+        a, b = np.nonzero(near)
+        heads += [members[i] for i in a]
+        tails += [members[i] for i in b]
+    graph = sparse.coo_matrix((np.ones(len(heads)), (heads, tails)), shape=(n, n))
+    return connected_components(graph, directed=False)[1] if n else np.zeros(0, int)
+
+
+def _minute_of_day(time: np.datetime64) -> float:
+    return float((time - time.astype("datetime64[D]")) / np.timedelta64(60, "s"))
+
+
+def _peak_place(episode: Episode) -> tuple[float, float, float]:
+    return max(episode.path, key=lambda s: s.peak).place
+
+
+def _season(group: Sequence[Episode], tz: ZoneInfo, day_stride: int) -> Season:
+    worst = min(group, key=lambda e: (-e.peak, e.number))
+    by_day: dict[date, list[Episode]] = {}
+    for e in group:
+        by_day.setdefault(e.day, []).append(e)
+    minutes = {d: sum(e.minutes for e in each) for d, each in by_day.items()}
+    starts = [_clock(e.start, tz) for e in group]
+    ends = [_clock(e.end, tz) for e in group]
+    return Season(
+        number=0,
+        criterion=worst.criterion,
+        protects=worst.protects,
+        receiver=worst.receiver,
+        spans=_spans(sorted((d, each[0].days) for d, each in by_day.items()), day_stride),
+        days=float(sum(each[0].days for each in by_day.values())),
+        clock=(min(starts), max(ends)),
+        minutes_per_day=float(max(minutes.values())),
+        minutes_per_year=float(sum(minutes[d] * by_day[d][0].days for d in by_day)),
+        peak=worst.peak,
+        worst=worst.number,
+        episodes=tuple(sorted(e.number for e in group)),
+    )
+
+
+def _spans(days: Sequence[tuple[date, float]], day_stride: int) -> tuple[tuple[date, date], ...]:
+    """Runs of days: each representative day stands for days on either side of it."""
+    spans: list[tuple[date, date]] = []
+    for day, weight in days:
+        half = timedelta(days=int((weight - 1.0) // 2))
+        first, last = day - half, day + half
+        if spans and (first - spans[-1][1]).days <= day_stride:
+            spans[-1] = (spans[-1][0], last)
+        else:
+            spans.append((first, last))
+    return tuple(spans)
+
+
+def _clock(time: np.datetime64, tz: ZoneInfo) -> str:
+    seconds = int(time.astype("datetime64[s]").astype(np.int64))
+    return datetime.fromtimestamp(seconds, timezone.utc).astimezone(tz).strftime("%H:%M")
