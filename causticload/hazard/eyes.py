@@ -47,7 +47,9 @@ BURN_KNEE_RAD = 0.118
 EYE_RESOLUTION_RAD = np.deg2rad(1.0 / 60.0)  # one minute of arc, common practice
 
 # Share of the solar beam in a band, for the ASTM G173 direct spectrum (280 to 4000 nm). Derived.
-RETINAL_SHARE = 0.608  # weighted by R(lambda): 1 to 700 nm, then 10^((700 - nm)/500), to 1400 nm
+# R(lambda), shape from memory: 1 for 380 to 700 nm, 10^((700 - nm)/500) to 1050, 0.2 to 1150,
+# 0.2 * 10^(0.02 (1150 - nm)) to 1200, 0.02 to 1400.
+RETINAL_SHARE = 0.608
 INFRARED_SHARE = 0.449  # 780 to 3000 nm
 BLUE_SHARE = 0.0858  # weighted by B(lambda)
 

@@ -54,12 +54,24 @@ class Material:
 
     @property
     def effusivity(self) -> float:
-        """sqrt(k rho c), W s^0.5 m^-2 K^-1."""
+        """How strongly the body draws heat.
+
+        Returns
+        -------
+        effusivity : float
+            sqrt(k rho c). [W s^0.5 m^-2 K^-1]
+        """
         return float((self.conductivity * self.density * self.heat_capacity) ** 0.5)
 
     @property
     def diffusivity(self) -> float:
-        """k/(rho c), m²/s."""
+        """How fast heat spreads in the body.
+
+        Returns
+        -------
+        diffusivity : float
+            k/(rho c). [m²/s]
+        """
         return self.conductivity / (self.density * self.heat_capacity)
 
     def limit(self, kind: LimitKind, quantity: LimitQuantity = "temperature") -> MaterialLimit:

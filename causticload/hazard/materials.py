@@ -124,7 +124,24 @@ class Surroundings:
 
 
 def environment(around: Surroundings, air_c: ArrayLike) -> tuple[float, Floats, Floats]:
-    """h (W m^-2 K^-1), air (K), and F Tsky^4 + (1 - F) Ta^4 (K^4)."""
+    """What the air and the sky around a surface do to it.
+
+    Parameters
+    ----------
+    around : Surroundings
+        Wind and share of sky; its air temperature is not used.
+    air_c : array_like of float
+        Air temperature, -60 to 60 °C. [°C]
+
+    Returns
+    -------
+    h : float
+        Coefficient of convection. [W m^-2 K^-1]
+    air : ndarray of float
+        [K]
+    cold4 : ndarray of float
+        F Tsky^4 + (1 - F) Ta^4, what a black surface takes up over sigma. [K^4]
+    """
     share = float(within("sky_view", around.sky_view, 0.0, 1.0))
     sky = sky_temperature_c(air_c) + ZERO_C
     air = np.asarray(air_c, dtype=np.float64) + ZERO_C
@@ -137,6 +154,20 @@ def balance_root(slope: Floats | float, quartic: Floats | float, heat: Floats) -
 
     The left side is convex and rising, so Newton's method comes down on the root from above after
     its first step, from any positive start.
+
+    Parameters
+    ----------
+    slope : ndarray of float or float
+        >= 0. [W m^-2 K^-1]
+    quartic : ndarray of float or float
+        >= 0; not 0 where ``slope`` is. [W m^-2 K^-4]
+    heat : ndarray of float
+        >= 0. [W/m²]
+
+    Returns
+    -------
+    T : ndarray of float
+        Broadcast shape. [K]
     """
     T = np.full(np.broadcast_shapes(np.shape(slope), np.shape(quartic), heat.shape), 300.0)
     for _ in range(60):
