@@ -140,8 +140,8 @@ def henriques_damage(times_s: ArrayLike, skin_c: ArrayLike) -> Floats:
     high = np.maximum(temperature[:-1], temperature[1:])
     cut = np.clip(low, HENRIQUES_FLOOR_C, np.maximum(high, HENRIQUES_FLOOR_C))
     rise = high - low
-    share = np.where(rise > 0.0, (high - cut) / np.where(rise > 0.0, rise, 1.0), 1.0)
-    share = np.where(high > HENRIQUES_FLOOR_C, share, 0.0)
+    above = np.maximum(high - cut, 0.0)
+    share = np.where(rise > 0.0, above / np.where(rise > 0.0, rise, 1.0), high > HENRIQUES_FLOOR_C)
     cold, hot = cut + ZERO_C, np.maximum(high, cut) + ZERO_C
     x = HENRIQUES_ACTIVATION * (1.0 / cold - 1.0 / hot)  # logarithm of the ratio of the rates
     growth = np.where(x > 0.0, np.expm1(x) / np.where(x > 0.0, x, 1.0), 1.0)

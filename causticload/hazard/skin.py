@@ -238,12 +238,15 @@ def time_to_effect(flux: ArrayLike, *, law: SkinLaw, extrapolate: bool = False) 
 
 def _mean_power(low: Floats, high: Floats, n: float) -> Floats:
     """Mean of q^n while q goes evenly from ``low`` to ``high``, 0 <= low <= high."""
+    alive = high > 1e-100  # below it the quotients underflow, and the mean is nothing
+    high = np.where(alive, high, 1.0)
+    low = np.where(alive, low, 1.0)
     width = high - low
     near = width <= 1e-4 * high  # the quotient would lose digits
-    middle = np.where(high > 0.0, (low + high) / 2.0, 1.0)
+    middle = (low + high) / 2.0
     series = middle**n * (1.0 + n * (n - 1.0) / 24.0 * (width / middle) ** 2)
     quotient = (high ** (n + 1.0) - low ** (n + 1.0)) / ((n + 1.0) * np.where(near, 1.0, width))
-    return np.asarray(np.where(high > 0.0, np.where(near, series, quotient), 0.0))
+    return np.asarray(np.where(alive, np.where(near, series, quotient), 0.0))
 
 
 def _integral_of_power(times: Floats, q: Floats, n: float, floor: float) -> Floats:
@@ -252,8 +255,8 @@ def _integral_of_power(times: Floats, q: Floats, n: float, floor: float) -> Floa
     low, high = np.minimum(first, last), np.maximum(first, last)
     rise = high - low
     cut = np.clip(low, floor, np.maximum(high, floor))
-    share = np.where(rise > 0.0, (high - cut) / np.where(rise > 0.0, rise, 1.0), 1.0)
-    share = np.where(high > floor, share, 0.0)
+    above = np.maximum(high - cut, 0.0)
+    share = np.where(rise > 0.0, above / np.where(rise > 0.0, rise, 1.0), high > floor)
     steps = np.diff(times).reshape(-1, *([1] * (q.ndim - 1)))
     mean = _mean_power(np.minimum(cut, high), high, n)
     return np.asarray((steps * share * mean).sum(axis=0))

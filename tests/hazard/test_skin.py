@@ -170,6 +170,13 @@ def test_dose_is_vectorised_over_points_and_flags_each():
     assert both.value[2] == 0.0
 
 
+def test_vanishing_flux_gives_no_dose_and_no_warning():
+    for law in SKIN_LAWS.values():
+        faint = dose([0.0, 1.0, 2.0], [0.0, 5e-324, 1e-300], law=law)
+        assert faint.value == 0.0
+    assert contact.henriques_damage([0.0, 1.0], [0.0, 5e-324]) == 0.0
+
+
 def test_thermal_dose_units():
     """Closed forms: constant 8 kW/m² for 10 s is 160; a ramp 0 to 8 gives 3/7 of it."""
     units = skin.thermal_dose_units([0.0, 10.0], [[8000.0, 0.0], [8000.0, 8000.0]])
