@@ -133,6 +133,7 @@ class _Experiment:
         face = lit.F.face_normal[facet]
         sheet = lit.sheet_of[facet]
         n = self._roughen(n, lit.slope_error[sheet])
+        n = n * np.sign(np.einsum("ni,ni->n", n, face))[:, None]
         side = np.sign(np.einsum("ni,ni->n", face, sun))
         lit_side = np.einsum("ni,ni->n", n, sun) * side
         out, power, axis = self._mirror(-sun, n, sheet, np.full((rays, 2), 0.5))
@@ -201,8 +202,9 @@ class _Experiment:
         out, again, _ = self._mirror(d[on], n, lit.sheet_of[t], power[on], axis[on])
         face = lit.F.face_normal[t]
         side = -np.sign(np.einsum("ni,ni->n", d[on], face))
+        turned = np.sign(np.einsum("ni,ni->n", n, face)) * side
         leaves = (np.einsum("ni,ni->n", out, face) * side > 0.0) & (
-            np.einsum("ni,ni->n", n, d[on]) * side < 0.0
+            np.einsum("ni,ni->n", n, d[on]) * turned < 0.0
         )
         z = y + (side * lit.clearance_m)[:, None] * face
         inside, far = self.arrive(z, out)

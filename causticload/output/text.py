@@ -1,0 +1,299 @@
+"""Plain summaries for a terminal: what, when, where, how strong, how long, how sure."""
+
+from __future__ import annotations
+
+from collections.abc import Iterable, Mapping, Sequence
+from textwrap import fill
+from typing import Any
+
+import numpy as np
+
+from causticload.hazard.cautions import cautions_for
+from causticload.hazard.findings import Episode, PeakCheck, Season
+from causticload.output import words
+from causticload.output.results import Instant, Year
+
+WIDTH = 100
+MOST_SEASONS = 8
+
+
+def _wrap(text: str, indent: str = "  ", first: str | None = None) -> str:
+    return fill(
+        text, WIDTH, initial_indent=indent if first is None else first, subsequent_indent=indent,
+        break_on_hyphens=False, break_long_words=False,
+    )  # fmt: skip
+
+
+def _listed(title: str, lines: Iterable[str]) -> list[str]:
+    body = [_wrap(line, "    ", "  - ") for line in lines]
+    return ["", title, *body] if body else []
+
+
+def summarise_year(year: Year) -> str:
+    """Say what a year found.
+
+    Parameters
+    ----------
+    year : Year
+        The year.
+
+    Returns
+    -------
+    text : str
+        About 100 columns wide.
+    """
+    s = year.summary
+    zone = year.study.site.timezone
+    lines = [f"{s['title']}: the year {s['year']['year']}", ""]
+    if not year.seasons:
+        lines.append(words.NO_EXCEEDANCE)
+    else:
+        lines.append(
+            _wrap(
+                f"{len(year.seasons)} hot spot{'s' if len(year.seasons) > 1 else ''} over a "
+                f"criterion, people before things, longest first:",
+                "",
+            )
+        )
+    by_number = {e.number: e for e in year.episodes}
+    for season in year.seasons[:MOST_SEASONS]:
+        lines += ["", *describe_season(season, by_number[season.worst], zone)]
+    if len(year.seasons) > MOST_SEASONS:
+        lines += ["", f"  and {len(year.seasons) - MOST_SEASONS} more; see episodes.csv."]
+    lines += ["", "Largest reflected load on each receiver"]
+    width = max([len(r["name"]) for r in s["receivers"]], default=0)
+    for r in sorted(s["receivers"], key=lambda r: -r["peak_reflected_W_m2"]):
+        when = r["peak_time"]
+        time = words.moment(np.datetime64(when.rstrip("Z")), zone) if when else "never lit"
+        lines.append(
+            f"  {r['name']:<{width}}  {words.load(r['peak_reflected_W_m2']):>12}  {time}"
+        )
+    lines += _how_sure(s)
+    lines += _listed("Assumed", s["assumed"])
+    lines += _listed("Cautions", s["cautions"])
+    return "\n".join(lines)
+
+
+def describe_season(season: Season, worst: Episode, zone: str) -> list[str]:
+    """Say what a season is, in a few lines.
+
+    Parameters
+    ----------
+    season : Season
+        The season.
+    worst : Episode
+        Its worst episode.
+    zone : str
+        IANA time zone.
+
+    Returns
+    -------
+    lines : list of str
+        The first one names it.
+    """
+    check = worst.check
+    peak = check.total if check and _is_total(worst) else worst.peak
+    if check and not _is_total(worst):
+        peak = check.reflected
+    place = check.place if check else max(worst.path, key=lambda p: p.peak).place
+    time = check.time if check else worst.peak_time
+    lines = [
+        f"{season.number}. {season.receiver}: over the criterion \"{season.criterion}\" "
+        f"({season.protects}, {words.load(worst.limit)})",
+        _wrap(
+            f"{words.spans(season)}, between {season.clock[0]} and {season.clock[1]} local clock "
+            f"time; up to {words.length(season.minutes_per_day)} a day on about "
+            f"{season.days:.0f} days, {words.length(season.minutes_per_year)} in the year.",
+            "   ",
+        ),
+        _wrap(
+            f"Strongest {words.load(peak)} at {words.place(place)} on "
+            f"{words.moment(time, zone)}, over at most {worst.area:.1f} m² at once.",
+            "   ",
+        ),
+    ]
+    if check:
+        lines.append(_wrap(describe_check(check), "   "))
+    if worst.contributors:
+        half = _panels_for(worst, 0.5)
+        lines.append(
+            _wrap(
+                f"{len(worst.contributors)} panels send light there; the strongest {half} bring "
+                f"half of it.",
+                "   ",
+            )
+        )
+    return lines
+
+
+def _is_total(episode: Episode) -> bool:
+    return episode.peak > episode.reflected * (1.0 + 1e-9)
+
+
+def _panels_for(episode: Episode, share: float) -> int:
+    running = np.cumsum([c.share for c in episode.contributors])
+    return int(np.searchsorted(running, share) + 1)
+
+
+def describe_check(check: PeakCheck) -> str:
+    """Say how a peak was confirmed.
+
+    Parameters
+    ----------
+    check : PeakCheck
+        The close look.
+
+    Returns
+    -------
+    text : str
+        One or two sentences.
+    """
+    verdict = (
+        "which agree"
+        if check.agrees
+        else "which DISAGREE by more than three standard errors: do not rely on this peak"
+    )
+    return (
+        f"Reflected light {words.load(check.reflected)} with {check.images} "
+        f"image{'s' if check.images != 1 else ''} of the sun in view. Over a disc of "
+        f"{1000 * check.disc_radius:.0f} mm radius ray tubes give {check.disc_mean:,.0f} and "
+        f"{check.rays:,} random rays {check.count_mean:,.0f} ± {check.count_error:,.0f} W/m², "
+        f"{verdict}."
+    )
+
+
+def _how_sure(s: Mapping[str, Any]) -> list[str]:
+    counts = s["ray_counts"]
+    ledger = s["ledger_kWh"]
+    lines = []
+    if counts["made"]:
+        lines.append(
+            f"Ray count: {counts['agree_within_three_standard_errors']} of {counts['made']} peaks "
+            f"agree within three standard errors."
+        )
+    lines.append(
+        f"Energy ledger of the year: {ledger['intercepted']:,.0f} kWh fell on the reflectors; it "
+        f"closes to {100 * abs(ledger['closure']):.2f} %."
+    )
+    check = s.get("tessellation")
+    if check:
+        lines.append(f"Tessellation check: {check['sentence']}")
+    lines.append(f"Rays by {s['tracer']}.")
+    lines += [f"{f['message']}" for f in s["scene"]["faults"]]
+    return _listed("How sure", lines)
+
+
+def summarise_instant(instant: Instant) -> str:
+    """Say what an instant found.
+
+    Parameters
+    ----------
+    instant : Instant
+        The instant.
+
+    Returns
+    -------
+    text : str
+        About 100 columns wide.
+    """
+    sun = instant.sun
+    zone = instant.study.site.timezone
+    when = words.moment(sun.time, zone) if sun.time is not None else "a sun given by its angles"
+    lines = [
+        f"{instant.study.title}: {when}",
+        f"Sun at azimuth {sun.azimuth:.1f}°, elevation {sun.elevation:.1f}°; beam "
+        f"{words.load(sun.beam)}, diffuse {words.load(sun.diffuse)}.",
+        "",
+        "Reflected load (mean over grid cells)",
+    ]
+    width = max([len(n) for n in instant.receivers], default=0)
+    for r in sorted(instant.receivers.values(), key=lambda r: -r.reflected.max(initial=0.0)):
+        top = int(r.reflected.argmax()) if len(r.reflected) else -1
+        if top < 0 or r.reflected[top] <= 0.0:
+            lines.append(f"  {r.name:<{width}}  no reflected light")
+            continue
+        where = words.place((float(r.points[top][0]), float(r.points[top][1]), float(r.points[top][2])))
+        lines.append(
+            f"  {r.name:<{width}}  {words.load(float(r.reflected[top])):>12}  "
+            f"{r.reflected[top] / sun.beam:5.2f} suns  {r.images[top]} images  at {where}"
+        )
+    L = instant.ledger
+    taken = L["intercepted"]
+    if taken > 0.0:
+        shares = ", ".join(
+            f"{name} {100 * L[name] / taken:.1f} %"
+            for name in ("absorbed", "receivers", "obstructions", "sky", "scattered", "unfollowed")
+            if L[name] > 0.0
+        )
+        lines += ["", _wrap(f"Of {taken / 1000:,.1f} kW on the reflectors: {shares}.", "")]
+    lines.append(
+        f"{instant.tubes:,} tubes and {instant.rays:,} rays in {instant.seconds:.2f} s by "
+        f"{instant.tracer}."
+    )
+    lines += _listed("Assumed", instant.assumed)
+    lines += _listed("Cautions", cautions_for({"people: skin", "people: eyes", "things"}))
+    return "\n".join(lines)
+
+
+def summarise_inspect(report: Mapping[str, Any]) -> str:
+    """Say what a model is.
+
+    Parameters
+    ----------
+    report : mapping
+        From :func:`causticload.run.inspect`.
+
+    Returns
+    -------
+    text : str
+        About 100 columns wide.
+    """
+    lines = ["Surfaces"]
+    surfaces = report.get("surfaces", [])
+    width = max([len(s["name"]) for s in surfaces], default=0)
+    for s in surfaces:
+        roles = ", ".join(s["roles"]) or "ignored"
+        more = []
+        if s.get("panels"):
+            more.append(f"{s['panels']} panels, {s.get('form', '')}, {s.get('finish', '')}")
+        if s.get("kind"):
+            more.append(s["kind"])
+        lines.append(
+            f"  {s['name']:<{width}}  {roles:<22} {s.get('triangles', 0):>7,} triangles  "
+            f"{s.get('area_m2', 0.0):>11,.1f} m²  {'; '.join(more)}".rstrip()
+        )
+    checks: Sequence[Mapping[str, Any]] = report.get("tessellation", [])
+    lines += _listed("Tessellation check", [f"{c['surface']}: {c['sentence']}" for c in checks])
+    lines += _listed("Curvature", [f"{c['surface']}: {c['sentence']}" for c in report.get("curvature", [])])
+    lines += _listed(
+        "Found in the model",
+        [f"{f['message']} {f.get('hint', '')}".strip() for f in report.get("faults", [])],
+    )
+    lines += _listed("Assumed", report.get("assumed", []))
+    lines += ["", f"Rays will be traced by {report.get('tracer', 'nothing yet')}."]
+    return "\n".join(lines)
+
+
+def summarise_finishes(rows: Sequence[Mapping[str, Any]]) -> str:
+    """List finishes.
+
+    Parameters
+    ----------
+    rows : sequence of mapping
+        From :func:`causticload.optics.list_finishes`.
+
+    Returns
+    -------
+    text : str
+        One finish a paragraph.
+    """
+    lines = ["Built-in finishes (reflectance at normal incidence, outdoor side)"]
+    for row in rows:
+        name = f"  {row['name']}"
+        figures = ", ".join(
+            f"{key.replace('_', ' ')} {value:.3f}" if isinstance(value, float) else f"{key} {value}"
+            for key, value in row.items()
+            if key not in ("name", "source") and value not in (None, "", ())
+        )
+        lines += ["", name, _wrap(figures, "    "), _wrap(str(row.get("source", "")), "    ")]
+    return "\n".join(lines)
