@@ -10,7 +10,7 @@ import threading
 import traceback
 from collections.abc import Callable, Sequence
 from pathlib import Path
-from typing import Any
+from typing import Any, ClassVar
 
 from causticload import __version__
 from causticload.errors import CausticloadError, InputError
@@ -43,9 +43,12 @@ def _parser() -> argparse.ArgumentParser:
 
     def add(name: str, text: str, *, study: bool = True) -> argparse.ArgumentParser:
         sub = commands.add_parser(
-            name, help=text, description=text, epilog=EPILOGS.get(name),
+            name,
+            help=text,
+            description=text,
+            epilog=EPILOGS.get(name),
             formatter_class=argparse.RawDescriptionHelpFormatter,
-        )  # fmt: skip
+        )
         if study:
             sub.add_argument("study", metavar="STUDY", type=Path, help="study file (TOML)")
         sub.add_argument("--json", action="store_true", help="print JSON and nothing else")
@@ -171,9 +174,7 @@ def _instant(options: argparse.Namespace) -> int:
     from causticload.study import read_study
 
     sun = _two_numbers(options.sun, "--sun") if options.sun else None
-    instant = solve_instant(
-        read_study(options.study), at=options.at, sun=sun, beam=options.beam
-    )
+    instant = solve_instant(read_study(options.study), at=options.at, sun=sun, beam=options.beam)
     if options.out:
         save_instant(instant, options.out)
     _print(options, instant_record(instant), lambda: summarise_instant(instant))
@@ -195,9 +196,13 @@ def _year(options: argparse.Namespace) -> int:
         store = DayStore(out, study, resume=options.resume)
         try:
             year = solve_year(
-                study, progress=bar.update, threads=options.workers, store=store, stop=stop,
+                study,
+                progress=bar.update,
+                threads=options.workers,
+                store=store,
+                stop=stop,
                 client=_cluster(options.cluster),
-            )  # fmt: skip
+            )
         except Stopped:
             bar.close()
             print(
@@ -236,8 +241,7 @@ class _stopping:  # noqa: N801 - reads as what it does in a with statement
 
     def __enter__(self) -> None:
         self.old = {
-            s: signal.signal(s, lambda *_: self.stop.set())
-            for s in (signal.SIGINT, signal.SIGTERM)
+            s: signal.signal(s, lambda *_: self.stop.set()) for s in (signal.SIGINT, signal.SIGTERM)
         }
 
     def __exit__(self, *_: object) -> None:
@@ -248,7 +252,11 @@ class _stopping:  # noqa: N801 - reads as what it does in a with statement
 class _Bar:
     """A progress bar with the time left, on a terminal only."""
 
-    NAMES = {"days": "Days of the year", "peaks": "Peaks and ray counts", "writing": "Writing"}
+    NAMES: ClassVar = {
+        "days": "Days of the year",
+        "peaks": "Peaks and ray counts",
+        "writing": "Writing",
+    }
 
     def __init__(self, options: argparse.Namespace) -> None:
         self.shown = sys.stderr.isatty() and not (options.quiet or options.json)
@@ -259,10 +267,13 @@ class _Bar:
         from rich.progress import BarColumn, Progress, TextColumn, TimeRemainingColumn
 
         self.bar = Progress(
-            TextColumn("{task.description:<22}"), BarColumn(), TextColumn("{task.completed}/{task.total}"),
-            TimeRemainingColumn(compact=True), console=Console(stderr=True),
+            TextColumn("{task.description:<22}"),
+            BarColumn(),
+            TextColumn("{task.completed}/{task.total}"),
+            TimeRemainingColumn(compact=True),
+            console=Console(stderr=True),
             disable=not self.shown,
-        )  # fmt: skip
+        )
         self.bar.start()
         return self
 
@@ -315,9 +326,10 @@ def _install_addon(options: argparse.Namespace) -> int:
 
     places = install_addon(options.host, into=options.into)
     _print(
-        options, {"installed": [str(p) for p in places]},
+        options,
+        {"installed": [str(p) for p in places]},
         lambda: "Installed into:\n" + "\n".join(f"  {p}" for p in places),
-    )  # fmt: skip
+    )
     return DONE
 
 

@@ -5,16 +5,14 @@ from __future__ import annotations
 import os
 import threading
 import time as clock
-from collections.abc import Callable, Sequence
+from collections.abc import Sequence
 from dataclasses import dataclass, replace
 from datetime import datetime
 from typing import Any, Protocol
 
 import numpy as np
 
-from causticload import __version__
 from causticload.errors import InputError
-from causticload.hazard.cautions import cautions_for
 from causticload.hazard.exceed import CriterionMap, Exceedance, merge_exceedance
 from causticload.hazard.findings import Episode
 from causticload.hazard.peaks import SunState, look_closely
@@ -25,11 +23,11 @@ from causticload.light.prepare import LitScene, prepare
 from causticload.light.tally import direct_factor, merge_loads
 from causticload.light.year import DayResult, run_day, run_days
 from causticload.optics.resolve import resolve_finish
+from causticload.output.assemble import day_rows, points_by_surface, receiver_years, summarise
 from causticload.output.results import (
     Instant,
     InstantSun,
     ReceiverInstant,
-    ReceiverYear,
     Year,
 )
 from causticload.scene.build import build_scene
@@ -195,9 +193,13 @@ def _utc(project: Project, at: str | datetime | np.datetime64) -> np.datetime64:
 
 
 def solve_instant(
-    study: Study | Project, *, at: str | datetime | np.datetime64 | None = None,
-    sun: tuple[float, float] | None = None, beam: float | None = None, threads: int | None = None,
-) -> Instant:  # fmt: skip
+    study: Study | Project,
+    *,
+    at: str | datetime | np.datetime64 | None = None,
+    sun: tuple[float, float] | None = None,
+    beam: float | None = None,
+    threads: int | None = None,
+) -> Instant:
     """Find the loads for one position of the sun.
 
     Parameters
@@ -229,12 +231,14 @@ def solve_instant(
     lit, scene = project.lit, project.scene
     started = clock.perf_counter()
     field = solve_field(
-        lit, sun_direction=state.direction, sun_radius=state.radius,
+        lit,
+        sun_direction=state.direction,
+        sun_radius=state.radius,
         threads=threads or os.cpu_count() or 1,
-    )  # fmt: skip
+    )
     seconds = clock.perf_counter() - started
     receivers = {}
-    for number, index in _points_by_surface(lit).items():
+    for number, index in points_by_surface(lit).items():
         surface = scene.surfaces[number]
 
         def direct(index: Any = index) -> Floats:
@@ -265,18 +269,18 @@ def solve_instant(
     )
 
 
-def _points_by_surface(lit: LitScene) -> dict[int, Any]:
-    """Numbers of the receiver points of each surface, in order."""
-    return {
-        int(s): np.flatnonzero(lit.point_surface == s) for s in np.unique(lit.point_surface)
-    }
-
-
 def count_rays(
-    study: Study | Project, *, receiver: str, centre: Sequence[float], radius: float,
-    sun: tuple[float, float] | None = None, at: str | datetime | np.datetime64 | None = None,
-    beam: float | None = None, rays: int = 2_000_000, seed: int = 1,
-) -> RayCount:  # fmt: skip
+    study: Study | Project,
+    *,
+    receiver: str,
+    centre: Sequence[float],
+    radius: float,
+    sun: tuple[float, float] | None = None,
+    at: str | datetime | np.datetime64 | None = None,
+    beam: float | None = None,
+    rays: int = 2_000_000,
+    seed: int = 1,
+) -> RayCount:
     """Measure the reflected load on a small disc of a receiver with random rays.
 
     Parameters
@@ -327,9 +331,15 @@ def count_rays(
     normal = lit.point_normals[nearest]
     on_plane = place + ((lit.points[nearest] - place) @ normal) * normal
     count = count_spot(
-        lit, sun_direction=state.direction, sun_radius=state.radius, centre=on_plane,
-        normal=normal, radius_m=radius, rays=rays, seed=seed,
-    )  # fmt: skip
+        lit,
+        sun_direction=state.direction,
+        sun_radius=state.radius,
+        centre=on_plane,
+        normal=normal,
+        radius_m=radius,
+        rays=rays,
+        seed=seed,
+    )
     return replace(
         count, mean=count.mean * state.beam, standard_error=count.standard_error * state.beam
     )
@@ -357,10 +367,15 @@ class Stopped(Exception):  # noqa: N818 - not an error: the user asked for it
 
 
 def solve_year(
-    study: Study | Project, *, progress: Progress | None = None, client: Any = None,
-    threads: int | None = None, store: DayStore | None = None,
-    stop: threading.Event | None = None, checks: int = 24,
-) -> Year:  # fmt: skip
+    study: Study | Project,
+    *,
+    progress: Progress | None = None,
+    client: Any = None,
+    threads: int | None = None,
+    store: DayStore | None = None,
+    stop: threading.Event | None = None,
+    checks: int = 24,
+) -> Year:
     """Screen a whole year.
 
     Parameters
@@ -412,22 +427,36 @@ def solve_year(
         contribution[c.panel] = c.load
     year = Year(
         study=study,
-        receivers=_receiver_years(project, loads, over, criteria),
+        receivers=receiver_years(lit, loads, over, criteria),
         episodes=episodes,
         seasons=seasons,
         summary={},
         contribution=contribution,
         scene=project.scene,
-        days=_day_rows(project, plan, days),
+        days=day_rows(project.scene, plan, days),
     )
-    year.summary = _summary(project, year, plan, days, criteria, clock.perf_counter() - started)
+    year.summary = summarise(
+        year,
+        lit,
+        criteria,
+        plan,
+        days,
+        assumed=project.assumed,
+        seconds=clock.perf_counter() - started,
+    )
     return year
 
 
 def _run_plan(
-    project: Project, plan: Sequence[DayPlan], criteria: CriterionMap, report: Progress,
-    client: Any, threads: int | None, store: DayStore | None, stop: threading.Event,
-) -> list[DayResult]:  # fmt: skip
+    project: Project,
+    plan: Sequence[DayPlan],
+    criteria: CriterionMap,
+    report: Progress,
+    client: Any,
+    threads: int | None,
+    store: DayStore | None,
+    stop: threading.Event,
+) -> list[DayResult]:
     """Work off the days of the plan that are not kept already, in the order of the plan."""
     lit = project.lit
     results: dict[int, DayResult] = {}
@@ -481,9 +510,13 @@ def _cluster_day(study: Study, day: DayPlan) -> DayResult | None:
 
 
 def _check_peaks(
-    project: Project, episodes: list[Episode], numbers: Sequence[int], report: Progress,
-    threads: int | None, stop: threading.Event,
-) -> list[Episode]:  # fmt: skip
+    project: Project,
+    episodes: list[Episode],
+    numbers: Sequence[int],
+    report: Progress,
+    threads: int | None,
+    stop: threading.Event,
+) -> list[Episode]:
     """Look closely at the peaks of some episodes."""
     from concurrent.futures import ThreadPoolExecutor
 
@@ -494,9 +527,12 @@ def _check_peaks(
         if stop.is_set():
             return episode
         return look_closely(
-            project.lit, episode, sun_at=lambda t: _sun_at(project, t),
-            step_minutes=project.study.year.step_minutes, seed=episode.number,
-        )  # fmt: skip
+            project.lit,
+            episode,
+            sun_at=lambda t: _sun_at(project, t),
+            step_minutes=project.study.year.step_minutes,
+            seed=episode.number,
+        )
 
     by_number = {e.number: e for e in episodes}
     with ThreadPoolExecutor(threads or os.cpu_count() or 1) as pool:
@@ -506,169 +542,6 @@ def _check_peaks(
     if stop.is_set():
         raise Stopped
     return [by_number[e.number] for e in episodes]
-
-
-def _receiver_years(
-    project: Project, loads: dict[str, Any], over: dict[str, Any], criteria: CriterionMap
-) -> dict[str, ReceiverYear]:
-    lit, scene = project.lit, project.scene
-    spacing = np.repeat([c.spacing for c in scene.charts], [len(c.areas) for c in scene.charts])
-    receivers = {}
-    for number, index in _points_by_surface(lit).items():
-        surface = scene.surfaces[number]
-        names = [c.name for k, c in enumerate(criteria.criteria) if criteria.holds[k, number]]
-        nothing = np.zeros(len(index))
-        kept = {n: over.get(n) for n in names}
-        time = loads["peak_time"][index].astype("datetime64[s]")
-
-        def column(key: str, index: Any = index, kept: Any = kept, nothing: Any = nothing) -> Any:
-            return {n: k[key][index] if k else nothing.copy() for n, k in kept.items()}
-
-        receivers[surface.name] = ReceiverYear(
-            name=surface.name,
-            kind=surface.kind,
-            points=lit.points[index] + scene.origin,
-            normals=lit.point_normals[index],
-            areas=lit.point_areas[index],
-            spacing=spacing[index],
-            first=int(index[0]),
-            peak_reflected=loads["peak"][index].astype(float),
-            peak_time=time,
-            energy=loads["energy"][index].astype(float),
-            images=loads["images"][index],
-            minutes_over=column("minutes"),
-            days_over=column("days"),
-            most_minutes=column("most"),
-        )
-    return receivers
-
-
-def _day_rows(
-    project: Project, plan: Sequence[DayPlan], days: Sequence[DayResult]
-) -> list[dict[str, Any]]:
-    """One row per date: worst reflected load per receiver and step, for charts of the year."""
-    names = [s.name for s in project.scene.surfaces]
-    receives = [i for i, s in enumerate(project.scene.surfaces) if "receiver" in s.roles]
-    rows = []
-    for day, result in zip(plan, days, strict=True):
-        for d, date in enumerate(day.dates):
-            rows.append(
-                {
-                    "date": date.isoformat(),
-                    "stands_for_days": float(day.weights[d]),
-                    "times": day.times[d].astype("datetime64[s]"),
-                    "azimuth": np.degrees(day.azimuth_rad),
-                    "elevation": np.degrees(day.elevation_rad),
-                    "worst": {names[i]: result.worst[d, :, i] for i in receives},
-                }
-            )
-    return sorted(rows, key=lambda r: r["date"])
-
-
-def _summary(
-    project: Project, year: Year, plan: Sequence[DayPlan], days: Sequence[DayResult],
-    criteria: CriterionMap, seconds: float,
-) -> dict[str, Any]:  # fmt: skip
-    """What summary.json holds beside the findings: figures, settings, assumptions, cautions."""
-    ledger = {
-        key: sum(d.ledger[key] * sum(p.weights) for d, p in zip(days, plan, strict=True)) / 3.6e6
-        for key in days[0].ledger
-    }
-    taken = ledger["intercepted"]
-    parts = ("absorbed", "receivers", "obstructions", "sky", "scattered", "unfollowed")
-    closure = (taken - sum(ledger[p] for p in parts)) / taken if taken > 0.0 else 0.0
-    scene, study = project.scene, project.study
-    checks = [e.check for e in year.episodes if e.check]
-    return {
-        "title": study.title,
-        "program": {"name": "causticload", "version": __version__},
-        "tracer": project.lit.tracer.name,
-        "site": {
-            "latitude": study.site.latitude,
-            "longitude": study.site.longitude,
-            "elevation": study.site.elevation,
-            "timezone": study.site.timezone,
-            "model_north": study.site.model_north,
-        },
-        "year": {
-            "year": study.year.year,
-            "step_minutes": study.year.step_minutes,
-            "day_stride": study.year.day_stride,
-            "representative_days": len(plan),
-            "positions_of_the_sun": int(sum(p.beam.shape[1] for p in plan)),
-        },
-        "scene": {
-            "triangles": len(scene.triangles),
-            "panels": len(scene.panels),
-            "reflector_area_m2": float(scene.panels.area.sum()),
-            "receiver_points": scene.point_count,
-            "surfaces": [
-                {
-                    "name": s.name,
-                    "roles": sorted(s.roles),
-                    "form": s.form,
-                    "finish": s.finish,
-                    "kind": s.kind,
-                    "triangles": s.triangles,
-                }
-                for s in scene.surfaces
-            ],
-            "faults": [
-                {"kind": f.kind, "count": f.count, "surface": f.surface, "message": f.message}
-                for f in scene.faults
-            ],
-        },
-        "criteria": [
-            {
-                "name": c.name,
-                "protects": c.protects,
-                "quantity": c.quantity,
-                "limit": c.limit,
-                "unit": c.unit,
-                "minutes": c.minutes,
-                "source": c.source,
-                "confidence": c.confidence,
-                "validity": c.validity,
-                "caution": c.caution,
-                "receivers": [
-                    s.name for i, s in enumerate(scene.surfaces) if criteria.holds[k, i]
-                ],
-            }
-            for k, c in enumerate(criteria.criteria)
-        ],
-        "receivers": [
-            {
-                "name": r.name,
-                "kind": r.kind,
-                "points": len(r.areas),
-                "area_m2": float(r.areas.sum()),
-                "peak_reflected_W_m2": float(r.peak_reflected.max(initial=0.0)),
-                "peak_time": str(r.peak_time[r.peak_reflected.argmax()]) + "Z"
-                if r.peak_reflected.max(initial=0.0) > 0.0
-                else None,
-                "most_images": int(r.images.max(initial=0)),
-                "energy_MJ": float((r.energy * r.areas).sum() / 1e6),
-                "over": {
-                    name: {
-                        "most_minutes_per_day": float(r.most_minutes[name].max(initial=0.0)),
-                        "most_minutes_per_year": float(r.minutes_over[name].max(initial=0.0)),
-                        "most_days": float(r.days_over[name].max(initial=0.0)),
-                        "area_m2": float(r.areas[r.minutes_over[name] > 0.0].sum()),
-                    }
-                    for name in r.minutes_over
-                },
-            }
-            for r in year.receivers.values()
-        ],
-        "ledger_kWh": {**ledger, "closure": closure},
-        "ray_counts": {
-            "made": len(checks),
-            "agree_within_three_standard_errors": sum(c.agrees for c in checks),
-        },
-        "assumed": list(project.assumed),
-        "cautions": list(cautions_for({c.protects for c in criteria.criteria})),
-        "seconds": seconds,
-    }
 
 
 def inspect(study: Study | Project) -> dict[str, Any]:

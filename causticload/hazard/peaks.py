@@ -84,15 +84,17 @@ class _Spot:
     def light(self, points: Floats, sun: SunState, bounced: list[Bounced]) -> PointLight:
         """Reflected light at points on the chart."""
         return solve_points(
-            self.lit, sun_direction=sun.direction, sun_radius=sun.radius_rad, points=points,
-            normals=np.broadcast_to(self.chart.normal, points.shape), bounced=bounced,
-        )  # fmt: skip
+            self.lit,
+            sun_direction=sun.direction,
+            sun_radius=sun.radius_rad,
+            points=points,
+            normals=np.broadcast_to(self.chart.normal, points.shape),
+            bounced=bounced,
+        )
 
     def second(self, sun: SunState) -> list[Bounced]:
         """Beams after a second reflection under this sun."""
-        return solve_field(
-            self.lit, sun_direction=sun.direction, sun_radius=sun.radius_rad
-        ).bounced
+        return solve_field(self.lit, sun_direction=sun.direction, sun_radius=sun.radius_rad).bounced
 
 
 def _chart_of(lit: LitScene, point: int) -> Chart:
@@ -141,9 +143,7 @@ def look_closely(
         images=int(light.images[light.load.argmax()]),
         width=width,
     )
-    return replace(
-        episode, check=check, contributors=_contributors(lit, light, sun.beam)
-    )
+    return replace(episode, check=check, contributors=_contributors(lit, light, sun.beam))
 
 
 def _search(
@@ -213,9 +213,16 @@ def _count(
     disc = spot.light(spot.disc(place, radius), sun, bounced)
     mean = float(disc.load.mean()) * sun.beam
     count = count_spot(
-        lit, sun_direction=sun.direction, sun_radius=sun.radius_rad, centre=place,
-        normal=spot.chart.normal, radius_m=radius, rays=RAYS, seed=seed, second=bool(bounced),
-    )  # fmt: skip
+        lit,
+        sun_direction=sun.direction,
+        sun_radius=sun.radius_rad,
+        centre=place,
+        normal=spot.chart.normal,
+        radius_m=radius,
+        rays=RAYS,
+        seed=seed,
+        second=bool(bounced),
+    )
     error = count.standard_error * sun.beam
     return PeakCheck(
         time=np.datetime64("NaT"),

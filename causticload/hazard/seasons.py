@@ -4,7 +4,7 @@ from __future__ import annotations
 
 from collections.abc import Sequence
 from dataclasses import replace
-from datetime import date, datetime, timedelta, timezone
+from datetime import UTC, date, datetime, timedelta
 from zoneinfo import ZoneInfo
 
 import numpy as np
@@ -146,4 +146,4 @@ def _spans(days: Sequence[tuple[date, float]], day_stride: int) -> tuple[tuple[d
 
 def _clock(time: np.datetime64, tz: ZoneInfo) -> str:
     seconds = int(time.astype("datetime64[s]").astype(np.int64))
-    return datetime.fromtimestamp(seconds, timezone.utc).astimezone(tz).strftime("%H:%M")
+    return datetime.fromtimestamp(seconds, UTC).astimezone(tz).strftime("%H:%M")

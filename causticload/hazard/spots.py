@@ -58,9 +58,7 @@ def regions(
         label = _grid_labels(index, charts[chart[0]])
     else:
         label = _near_labels(places[index], TOUCH * max(charts[c].spacing for c in set(chart)))
-    found = [
-        Region(index[label == k], value[label == k]) for k in range(int(label.max()) + 1)
-    ]
+    found = [Region(index[label == k], value[label == k]) for k in range(int(label.max()) + 1)]
     return sorted(found, key=lambda r: -float(r.value.max()))
 
 

@@ -95,9 +95,15 @@ def _from_start(F: Facets, beams: Beams, triangle: Ints) -> Floats:
 
 
 def bounce(
-    beams: Beams, *, F: Facets, R: Floats, sheet_of: Ints, meanings: Meanings, tracer: Tracer,
+    beams: Beams,
+    *,
+    F: Facets,
+    R: Floats,
+    sheet_of: Ints,
+    meanings: Meanings,
+    tracer: Tracer,
     clearance_m: float,
-) -> tuple[Beams, Bools, Ints]:  # fmt: skip
+) -> tuple[Beams, Bools, Ints]:
     """Reflect beams off the mirror that all their rays meet.
 
     The two polarisations are turned from the first plane of incidence into the second: light
@@ -142,7 +148,5 @@ def bounce(
     triangle = np.where(whole[:, None], triangle, 0)
     distance = np.where(whole[:, None], distance, 1.0)
     bounced = empty_beams(k)
-    _bounce(
-        F, R, np.maximum(sheet_of, 0), beams, triangle, distance, bounced, whole
-    )  # fmt: skip
+    _bounce(F, R, np.maximum(sheet_of, 0), beams, triangle, distance, bounced, whole)
     return bounced, whole, sheet_of[triangle[:, 0]]

@@ -70,9 +70,7 @@ def _pieces(lit: LitScene, s: Floats) -> _Pieces:
     return _Pieces(facet, corner, normal, 0.5 * np.abs(cross @ s))
 
 
-def _may_reach(
-    p: _Pieces, s: Floats, *, spread: float, centre: Floats, radius: float
-) -> Bools:
+def _may_reach(p: _Pieces, s: Floats, *, spread: float, centre: Floats, radius: float) -> Bools:
     """Pieces of which any ray could pass within ``radius`` of ``centre``; never too few.
 
     A ray starts within the piece's radius of its middle, and leaves within twice the largest
@@ -105,9 +103,15 @@ class _Experiment:
     """Random rays under one sun, and what they bring to one spot."""
 
     def __init__(
-        self, lit: LitScene, s: Floats, sun_radius: float, centre: Floats, normal: Floats,
-        radius: float, rng: np.random.Generator,
-    ) -> None:  # fmt: skip
+        self,
+        lit: LitScene,
+        s: Floats,
+        sun_radius: float,
+        centre: Floats,
+        normal: Floats,
+        radius: float,
+        rng: np.random.Generator,
+    ) -> None:
         self.lit, self.s, self.sun_radius, self.rng = lit, s, sun_radius, rng
         self.centre, self.normal, self.radius = centre, normal, radius
         self.angle = np.radians(np.linspace(0.0, 90.0, lit.R.shape[-1]))
@@ -235,9 +239,17 @@ class _Experiment:
 
 
 def count_spot(
-    lit: LitScene, *, sun_direction: Floats, sun_radius: float, centre: Floats, normal: Floats,
-    radius_m: float, rays: int, seed: int, second: bool = True,
-) -> RayCount:  # fmt: skip
+    lit: LitScene,
+    *,
+    sun_direction: Floats,
+    sun_radius: float,
+    centre: Floats,
+    normal: Floats,
+    radius_m: float,
+    rays: int,
+    seed: int,
+    second: bool = True,
+) -> RayCount:
     """Count random rays that reach a small disc on a receiver.
 
     Rays start only on pieces of reflectors from which the disc can be reached by one reflection,
@@ -279,9 +291,14 @@ def count_spot(
         raise InputError(f"rays must be at least 1,000 to give a standard error, got {rays}")
     s = np.asarray(sun_direction, dtype=float)
     experiment = _Experiment(
-        lit, s, sun_radius, np.asarray(centre, float), np.asarray(normal, float), radius_m,
+        lit,
+        s,
+        sun_radius,
+        np.asarray(centre, float),
+        np.asarray(normal, float),
+        radius_m,
         np.random.default_rng(seed),
-    )  # fmt: skip
+    )
     everything = _pieces(lit, s)
     everything = _select(everything, everything.across > 0.0)
     # Far out on the Gaussian of a rough surface a ray still counts: six standard deviations.

@@ -118,9 +118,15 @@ class Bounced(NamedTuple):
 
 
 LEDGER = (
-    "intercepted", "absorbed", "receivers", "obstructions", "sky", "scattered", "unfollowed",
+    "intercepted",
+    "absorbed",
+    "receivers",
+    "obstructions",
+    "sky",
+    "scattered",
+    "unfollowed",
     "rereflected",
-)  # fmt: skip
+)
 
 
 def solve_field(
@@ -217,9 +223,11 @@ class _Walk:
         asks = sun == UNKNOWN
         if asks.any():
             seen = count_sun(
-                beams.take(asks), tracer=lit.tracer, sun_direction=self.s,
+                beams.take(asks),
+                tracer=lit.tracer,
+                sun_direction=self.s,
                 clearance_m=lit.clearance_m,
-            )  # fmt: skip
+            )
             self.field.rays += 4 * len(seen)
             sun[asks] = seen / 4.0
         generation = generation._replace(sun=sun)
@@ -240,9 +248,14 @@ class _Walk:
         lit = self.lit
         self.field.rays += 4 * len(ring)
         return find_targets(
-            beams, F=lit.F, meanings=lit.meanings, tracer=lit.tracer, reach=self.reach, ring=ring,
+            beams,
+            F=lit.F,
+            meanings=lit.meanings,
+            tracer=lit.tracer,
+            reach=self.reach,
+            ring=ring,
             clearance_m=lit.clearance_m,
-        )  # fmt: skip
+        )
 
     # The ledger -------------------------------------------------------------------------------
 
@@ -279,16 +292,15 @@ class _Walk:
         edge, fine = self._is_fine(beams, chart, generation.tubes.sheet, generation.age)
         ready, landed = generation.take(fine), beams.take(fine)
         self._take_in(ready, landed)
-        self._splat(landed, landed.solar * self._mirrored(ready.tubes.sheet), ready.tubes.sheet,
-                    chart[fine])  # fmt: skip
+        self._splat(
+            landed, landed.solar * self._mirrored(ready.tubes.sheet), ready.tubes.sheet, chart[fine]
+        )
         return halve_generation(generation.take(~fine), edge[~fine])
 
     def _mirrored(self, sheet: Ints) -> Floats:
         return 1.0 - self.lit.scatter[sheet]
 
-    def _is_fine(
-        self, beams: Beams, chart: Ints, ring: Ints, age: Ints
-    ) -> tuple[Ints, Bools]:
+    def _is_fine(self, beams: Beams, chart: Ints, ring: Ints, age: Ints) -> tuple[Ints, Bools]:
         """Return the edge to halve, and whether three corners describe the image well enough."""
         G = self.lit.grids
         error, length, depth = image_errors(beams, o=G.origin[chart], n=G.normal[chart])
@@ -303,9 +315,16 @@ class _Walk:
     def _splat(self, beams: Beams, factor: Floats, ring: Ints, chart: Ints) -> None:
         self.field.tubes += len(chart)
         splat(
-            beams, factor=factor, radii=self.radii, weights=self.weights, ring=ring, chart=chart,
-            grids=self.lit.grids, load=self.field.load, images=self.field.images,
-        )  # fmt: skip
+            beams,
+            factor=factor,
+            radii=self.radii,
+            weights=self.weights,
+            ring=ring,
+            chart=chart,
+            grids=self.lit.grids,
+            load=self.field.load,
+            images=self.field.images,
+        )
 
     # Beams that disagree ----------------------------------------------------------------------
 
@@ -321,8 +340,14 @@ class _Walk:
         flux = self._take_in(ready, settled)
         self._split_flux(flux, code[done])
         self._add("unfollowed", flux * (code[done] <= MIRROR).mean(axis=1))
-        self._settle(settled, None, code[done], ready.sun == 1.0,
-                     settled.solar * self._mirrored(ring[done]), ring[done])  # fmt: skip
+        self._settle(
+            settled,
+            None,
+            code[done],
+            ready.sun == 1.0,
+            settled.solar * self._mirrored(ring[done]),
+            ring[done],
+        )
         rest = beams.take(~done)
         return halve_generation(generation.take(~done), _longest_edge(rest))
 
@@ -330,33 +355,51 @@ class _Walk:
         """Whether asking for each sample costs less than halving the beam again."""
         beam, chart = distinct_charts(code)
         count = count_samples(
-            beams, beam=beam, chart=chart, radii=self.radii, weights=self.weights, ring=ring,
+            beams,
+            beam=beam,
+            chart=chart,
+            radii=self.radii,
+            weights=self.weights,
+            ring=ring,
             grids=self.lit.grids,
-        )  # fmt: skip
+        )
         total = np.bincount(beam, weights=count, minlength=len(ring))
         # Halving is of no use once the sun's own disc fills most of the footprint.
         G = self.lit.grids
-        _, length, z = image_errors(
-            beams.take(beam), o=G.origin[chart], n=G.normal[chart]
-        )
+        _, length, z = image_errors(beams.take(beam), o=G.origin[chart], n=G.normal[chart])
         blurred = length.max(axis=1) <= self.reach[ring[beam]] * (z + beams.longest[beam])
         dust = np.ones(len(ring), bool)
         np.logical_and.at(dust, beam, blurred | (z < 0.0))
         return (total <= SETTLE_SAMPLES) | dust
 
     def _settle(
-        self, beams: Beams, sources: Beams | None, code: Ints, sun_clear: Bools, factor: Floats,
+        self,
+        beams: Beams,
+        sources: Beams | None,
+        code: Ints,
+        sun_clear: Bools,
+        factor: Floats,
         ring: Ints,
-    ) -> None:  # fmt: skip
+    ) -> None:
         lit = self.lit
         beam, chart = distinct_charts(code)
         self.field.tubes += len(ring)
         settle(
-            beams, sources=sources, beam=beam, chart=chart, sun_clear=sun_clear, factor=factor,
-            radii=self.radii, weights=self.weights, ring=ring, grids=lit.grids,
-            tracer=lit.tracer, sun_direction=self.s, clearance_m=lit.clearance_m,
+            beams,
+            sources=sources,
+            beam=beam,
+            chart=chart,
+            sun_clear=sun_clear,
+            factor=factor,
+            radii=self.radii,
+            weights=self.weights,
+            ring=ring,
+            grids=lit.grids,
+            tracer=lit.tracer,
+            sun_direction=self.s,
+            clearance_m=lit.clearance_m,
             load=self.field.load,
-        )  # fmt: skip
+        )
 
     # Beams that meet a mirror -----------------------------------------------------------------
 
@@ -366,9 +409,14 @@ class _Walk:
         if not len(generation.age):
             return generation
         after, whole, sheet = bounce(
-            beams, F=lit.F, R=lit.R, sheet_of=lit.sheet_of, meanings=lit.meanings,
-            tracer=lit.tracer, clearance_m=lit.clearance_m,
-        )  # fmt: skip
+            beams,
+            F=lit.F,
+            R=lit.R,
+            sheet_of=lit.sheet_of,
+            meanings=lit.meanings,
+            tracer=lit.tracer,
+            clearance_m=lit.clearance_m,
+        )
         self.field.rays += 6 * len(sheet)
         torn = ~whole
         lost = torn & (generation.age >= MIRROR_HALVINGS)
@@ -390,7 +438,6 @@ class _Walk:
         self, generation: Generation, before: Beams, after: Beams, sheet: Ints
     ) -> tuple[Generation, Ints]:
         """Land beams after their second reflection; return those too large and where to halve."""
-        lit = self.lit
         own = generation.tubes.sheet
         # The wider of the two blurs stands for both where surfaces are rough.
         ring = np.where(self.reach[sheet] > self.reach[own], sheet, own).astype(np.int32)
@@ -418,13 +465,22 @@ class _Walk:
         now = fine & lands
         self._splat(after.take(now), factor[now], ring[now], code[now, 0])
         now = fine & straddles
-        self._settle(after.take(now), before.take(now), code[now], np.ones(now.sum(), bool),
-                     factor[now], ring[now])  # fmt: skip
+        self._settle(
+            after.take(now),
+            before.take(now),
+            code[now],
+            np.ones(now.sum(), bool),
+            factor[now],
+            ring[now],
+        )
         self.field.bounced.append(
             Bounced(
-                after.take(fine), before.take(fine), generation.tubes.take(fine), ring[fine],
+                after.take(fine),
+                before.take(fine),
+                generation.tubes.take(fine),
+                ring[fine],
                 onward[fine],
-            )  # fmt: skip
+            )
         )
         return generation.take(~fine), edge[~fine]
 

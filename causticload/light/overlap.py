@@ -57,7 +57,7 @@ def _edge_area(ax, ay, bx, by, rho2):
 
 @njit(cache=True, nogil=True, error_model="numpy")
 def _ramp_share(s, s0, s1, s2):
-    """Share of a thin triangle's area before ``s``; its width is a ramp up to s1, then down to s2."""
+    """Share of a thin triangle's area before ``s``: its width rises to s1, then falls to s2."""
     if s <= s0:
         return 0.0
     if s >= s2:
@@ -80,7 +80,7 @@ def _thin_fraction(ax, ay, bx, by, cx, cy, rho2):
         ox, oy, dx, dy, L2 = bx, by, cx - bx, cy - by, bc
     else:
         ox, oy, dx, dy, L2 = cx, cy, ax - cx, ay - cy, ca
-    if L2 <= 1e-24 * rho2:  # a point
+    if 1e-24 * rho2 >= L2:  # a point
         return 1.0 if ox * ox + oy * oy <= rho2 else 0.0
     L = math.sqrt(L2)
     ex, ey = dx / L, dy / L
@@ -101,7 +101,7 @@ def covered_fraction(ax, ay, bx, by, cx, cy, rho):
     rho2 = rho * rho
     twice = (bx - ax) * (cy - ay) - (by - ay) * (cx - ax)
     A = 0.5 * abs(twice)
-    if A < THIN * rho2:
+    if THIN * rho2 > A:
         return _thin_fraction(ax, ay, bx, by, cx, cy, rho2)
     S = (
         _edge_area(ax, ay, bx, by, rho2)
@@ -185,9 +185,7 @@ def triangle_disc_fraction(triangle: Floats, *, centre: Floats, radius: float) -
     T = np.asarray(triangle, dtype=float)
     P = np.asarray(centre, dtype=float)
     if T.shape != (3, 2) or P.shape != (2,):
-        raise InputError(
-            f"triangle must be (3, 2) and centre (2,), got {T.shape} and {P.shape}"
-        )
+        raise InputError(f"triangle must be (3, 2) and centre (2,), got {T.shape} and {P.shape}")
     if not (np.isfinite(T).all() and np.isfinite(P).all() and 0.0 < radius < math.inf):
         raise InputError(f"corners and centre must be finite and radius > 0, got radius {radius}")
     a, b, c = T - P

@@ -92,9 +92,7 @@ def _approach(B, before, C, radius, reach, ring, near, error, edge):
         mx, my = (q[0, 0] + q[1, 0] + q[2, 0]) / 3.0, (q[0, 1] + q[1, 1] + q[2, 1]) / 3.0
         for j in range(3):
             n = (j + 1) % 3
-            e = math.hypot(
-                m[j, 0] - 0.5 * (q[j, 0] + q[n, 0]), m[j, 1] - 0.5 * (q[j, 1] + q[n, 1])
-            )
+            e = math.hypot(m[j, 0] - 0.5 * (q[j, 0] + q[n, 0]), m[j, 1] - 0.5 * (q[j, 1] + q[n, 1]))
             bulge += e
             if e > worst:
                 worst, edge[k] = e, j
@@ -139,9 +137,16 @@ def _gather(B, factor, radii, weights, ring, P, N, tube, point, load, weight, wh
                 found += 1
                 continue
             density = flux_density(
-                q[0, 0] - x, q[0, 1] - y, q[1, 0] - x, q[1, 1] - y, q[2, 0] - x, q[2, 1] - y,
-                path_at(W, x, y, z), r, weights[ring[k]],
-            )  # fmt: skip
+                q[0, 0] - x,
+                q[0, 1] - y,
+                q[1, 0] - x,
+                q[1, 1] - y,
+                q[2, 0] - x,
+                q[2, 1] - y,
+                path_at(W, x, y, z),
+                r,
+                weights[ring[k]],
+            )
             if density <= 0.0:
                 continue
             nearest_in_triangle(q, x, y, w)
@@ -155,9 +160,14 @@ def _gather(B, factor, radii, weights, ring, P, N, tube, point, load, weight, wh
 
 
 def solve_points(
-    lit: LitScene, *, sun_direction: Floats, sun_radius: float, points: Floats,
-    normals: Floats | None = None, bounced: list[Bounced] | None = None,
-) -> PointLight:  # fmt: skip
+    lit: LitScene,
+    *,
+    sun_direction: Floats,
+    sun_radius: float,
+    points: Floats,
+    normals: Floats | None = None,
+    bounced: list[Bounced] | None = None,
+) -> PointLight:
     """Find the reflected light at points.
 
     Parameters
@@ -211,7 +221,9 @@ class _Question:
     def _approach(self, beams: Beams, ring: Ints) -> tuple[Bools, Floats, Ints]:
         n = len(ring)
         near, error, edge = np.empty(n, bool), np.empty(n), np.empty(n, np.int64)
-        _approach(beams, beams.longest, self.middle, self.radius, self.reach, ring, near, error, edge)
+        _approach(
+            beams, beams.longest, self.middle, self.radius, self.reach, ring, near, error, edge
+        )
         return near, error, edge
 
     def direct(self) -> Parts:
@@ -240,9 +252,12 @@ class _Question:
         tubes = bounced.tubes.take(near)
         kept = bounced.kept[near]
         return self._gather(
-            bounced.beams.take(near), bounced.sources.take(near), tubes, kept,
+            bounced.beams.take(near),
+            bounced.sources.take(near),
+            tubes,
+            kept,
             bounced.sheet[near],
-        )  # fmt: skip
+        )
 
     def _gather(
         self, beams: Beams, sources: Beams | None, tubes: Tubes, kept: Floats, ring: Ints
@@ -253,9 +268,12 @@ class _Question:
 
         def room(q: int) -> tuple[Ints, Ints, Floats, Floats, Bools]:
             return (
-                np.empty(q, np.int32), np.empty(q, np.int32), np.empty(q), np.empty((q, 3)),
+                np.empty(q, np.int32),
+                np.empty(q, np.int32),
+                np.empty(q),
+                np.empty((q, 3)),
                 np.empty(q, bool),
-            )  # fmt: skip
+            )
 
         out = room(max(1, _gather(*args, *room(0))))
         used = _gather(*args, *out)

@@ -93,9 +93,7 @@ def prepare(
     tables = ReflectanceTables.build([f.combined() for f in finishes])
     sheet_of = np.where(scene.panel >= 0, tables.first_sheet[scene.surface], -1).astype(np.int32)
     facet = scene.reflectors
-    base = cut_to_length(
-        F, whole_facets(F, facet, sheet_of[facet]), longest_m=LONGEST_EDGE_M
-    )
+    base = cut_to_length(F, whole_facets(F, facet, sheet_of[facet]), longest_m=LONGEST_EDGE_M)
     grids = make_grids(scene.charts)
     mirrors = np.array([("reflector" in s.roles) for s in scene.surfaces], dtype=bool)
     counts = [len(c.areas) for c in scene.charts]

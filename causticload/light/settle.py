@@ -78,16 +78,16 @@ def _walk(B, beam, factor, radii, weights, ring, chart, G, S):
         h, nu, nv = G.spacing[c], G.shape[c, 0], G.shape[c, 1]
         m = samples_per_axis(h, half_width(Q, rho))
         step = h / m
-        j_first = max(0, int(math.ceil(low / step - 0.5)))
-        j_last = min(nv * m - 1, int(math.floor(high / step - 0.5)))
+        j_first = max(0, math.ceil(low / step - 0.5))
+        j_last = min(nv * m - 1, math.floor(high / step - 0.5))
         for j in range(j_first, j_last + 1):
             y = (j + 0.5) * step
             px, py = M[1, 0] + y * M[1, 2], M[2, 0] + y * M[2, 2]
             x_in, x_out = row_interval(Q, px, py, M[1, 1], M[2, 1], rho)
             if x_in > x_out:
                 continue
-            i_first = max(0, int(math.ceil(x_in / step - 0.5)))
-            i_last = min(nu * m - 1, int(math.floor(x_out / step - 0.5)))
+            i_first = max(0, math.ceil(x_in / step - 0.5))
+            i_last = min(nu * m - 1, math.floor(x_out / step - 0.5))
             if S.pair.size == 0:  # only counting: an upper bound will do
                 found += max(0, i_last - i_first + 1)
                 continue
@@ -99,9 +99,16 @@ def _walk(B, beam, factor, radii, weights, ring, chart, G, S):
                 if p < 0 or D <= 0.0:
                     continue
                 density = flux_density(
-                    Q[0, 0] - a, Q[0, 1] - b, Q[1, 0] - a, Q[1, 1] - b, Q[2, 0] - a, Q[2, 1] - b,
-                    D, tan_radii, shares,
-                )  # fmt: skip
+                    Q[0, 0] - a,
+                    Q[0, 1] - b,
+                    Q[1, 0] - a,
+                    Q[1, 1] - b,
+                    Q[2, 0] - a,
+                    Q[2, 1] - b,
+                    D,
+                    tan_radii,
+                    shares,
+                )
                 if density <= 0.0:
                     continue
                 nearest_in_triangle(Q, a, b, w)
@@ -125,9 +132,15 @@ def _room(q: int) -> Samples:
 
 
 def count_samples(
-    beams: Beams, *, beam: Ints, chart: Ints, radii: Floats, weights: Floats, ring: Ints,
+    beams: Beams,
+    *,
+    beam: Ints,
+    chart: Ints,
+    radii: Floats,
+    weights: Floats,
+    ring: Ints,
     grids: Grids,
-) -> Ints:  # fmt: skip
+) -> Ints:
     """Count the samples in each pair's footprint: what it would cost to settle it.
 
     Parameters
@@ -174,10 +187,22 @@ def _count(B, beam, radii, ring, chart, G):
 
 
 def settle(
-    beams: Beams, *, sources: Beams | None, beam: Ints, chart: Ints, sun_clear: Bools,
-    factor: Floats, radii: Floats, weights: Floats, ring: Ints, grids: Grids, tracer: Tracer,
-    sun_direction: Floats, clearance_m: float, load: Floats,
-) -> None:  # fmt: skip
+    beams: Beams,
+    *,
+    sources: Beams | None,
+    beam: Ints,
+    chart: Ints,
+    sun_clear: Bools,
+    factor: Floats,
+    radii: Floats,
+    weights: Floats,
+    ring: Ints,
+    grids: Grids,
+    tracer: Tracer,
+    sun_direction: Floats,
+    clearance_m: float,
+    load: Floats,
+) -> None:
     """Add what straddling beams give to each receiver sample that can see it.
 
     Parameters
@@ -227,9 +252,7 @@ def settle(
     np.add.at(load, S.point[free], S.load[free])
 
 
-def reflecting_points(
-    beams: Beams, beam: Ints, weight: Floats, clearance_m: float
-) -> Floats:
+def reflecting_points(beams: Beams, beam: Ints, weight: Floats, clearance_m: float) -> Floats:
     """Points of beams' starts, clear of their facets.
 
     Parameters

@@ -134,7 +134,7 @@ def half_width(Q, rho):
 @njit(cache=True, nogil=True, error_model="numpy")
 def samples_per_axis(h, width):
     """Number of samples along a cell of size ``h`` for a footprint of this half width."""
-    return min(int(math.ceil(h / (SAMPLE_STEP * width))), MOST_SAMPLES)
+    return min(math.ceil(h / (SAMPLE_STEP * width)), MOST_SAMPLES)
 
 
 @njit(cache=True, nogil=True, error_model="numpy")
@@ -209,14 +209,12 @@ def footprint(B, k, G, c, reach, Q, grid_to_beam, plane):
 
     ``Q`` (3, 2) takes the image across the beam; ``grid_to_beam`` (3, 3) takes depth and the two
     cross coordinates of the grid's corner (column 0) and of a step of one metre along u and v
-    (columns 1, 2); ``plane`` (5,) what :func:`path_plane` lays. ``reach`` is the tangent of the largest disc's angular radius. Returns the
-    largest radius of the sun's image and the first and last grid row (in metres along v) that it
-    can touch; a radius below 0 where they do not meet.
+    (columns 1, 2); ``plane`` (5,) what :func:`path_plane` lays. ``reach`` is the tangent of the
+    largest disc's angular radius. Returns the largest radius of the sun's image and the first and
+    last grid row (in metres along v) that it can touch; a radius below 0 where they do not meet.
     """
     o, n = G.origin[c], G.normal[c]
-    near, far = image_on_plane(
-        B.start[k, :3], B.direction[k, :3], B.chief[k], B.frame[k], o, n, Q
-    )
+    near, far = image_on_plane(B.start[k, :3], B.direction[k, :3], B.chief[k], B.frame[k], o, n, Q)
     if near < 0.0:
         return -1.0, 0.0, 0.0
     for a in range(3):
@@ -236,9 +234,7 @@ def footprint(B, k, G, c, reach, Q, grid_to_beam, plane):
         return -1.0, 0.0, 0.0
     depth_u, depth_v = grid_to_beam[0, 1], grid_to_beam[0, 2]
     # The depth over the footprint: that of the image and of its blur, which tilts with the chart.
-    slope = math.hypot(
-        (depth_u * d - depth_v * cc) / det, (depth_v * a - depth_u * b) / det
-    )
+    slope = math.hypot((depth_u * d - depth_v * cc) / det, (depth_v * a - depth_u * b) / det)
     path_plane(B, k, Q, plane)
     rho = reach * (far + plane[4])
     rho = rho / max(0.05, 1.0 - slope * reach)
@@ -267,16 +263,16 @@ def _splat(B, factor, radii, weights, ring, chart, G, E, images):
         m = samples_per_axis(h, half_width(Q, rho))
         step = h / m
         strength = factor[k] * cos_g / (m * m)
-        j_first = max(0, int(math.ceil(low / step - 0.5)))
-        j_last = min(nv * m - 1, int(math.floor(high / step - 0.5)))
+        j_first = max(0, math.ceil(low / step - 0.5))
+        j_last = min(nv * m - 1, math.floor(high / step - 0.5))
         for j in range(j_first, j_last + 1):
             y = (j + 0.5) * step
             px, py = M[1, 0] + y * M[1, 2], M[2, 0] + y * M[2, 2]
             x_in, x_out = row_interval(Q, px, py, M[1, 1], M[2, 1], rho)
             if x_in > x_out:
                 continue
-            i_first = max(0, int(math.ceil(x_in / step - 0.5)))
-            i_last = min(nu * m - 1, int(math.floor(x_out / step - 0.5)))
+            i_first = max(0, math.ceil(x_in / step - 0.5))
+            i_last = min(nu * m - 1, math.floor(x_out / step - 0.5))
             for i in range(i_first, i_last + 1):
                 p = G.cell[G.offset[c] + (i // m) * nv + j // m]
                 if p < 0:
@@ -297,13 +293,23 @@ def _splat(B, factor, radii, weights, ring, chart, G, E, images):
                     E[p] += strength / area
                 else:
                     E[p] += strength * flux_density(
-                        Q[0, 0] - a, Q[0, 1] - b, Q[1, 0] - a, Q[1, 1] - b,
-                        Q[2, 0] - a, Q[2, 1] - b, D, tan_radii, shares,
-                    )  # fmt: skip
+                        Q[0, 0] - a,
+                        Q[0, 1] - b,
+                        Q[1, 0] - a,
+                        Q[1, 1] - b,
+                        Q[2, 0] - a,
+                        Q[2, 1] - b,
+                        D,
+                        tan_radii,
+                        shares,
+                    )
                 if i % m == m // 2 and j % m == m // 2:
                     x += (0.5 * m - m // 2 - 0.5) * step  # from the sample to the cell's middle
                     yy = y + (0.5 * m - m // 2 - 0.5) * step
-                    a, b = M[1, 0] + x * M[1, 1] + yy * M[1, 2], M[2, 0] + x * M[2, 1] + yy * M[2, 2]
+                    a, b = (
+                        M[1, 0] + x * M[1, 1] + yy * M[1, 2],
+                        M[2, 0] + x * M[2, 1] + yy * M[2, 2],
+                    )
                     if has_inside(Q, a, b):
                         images[p] += 1
 

@@ -105,9 +105,16 @@ class Moment:
     """
 
     def __init__(
-        self, light: StepLight, *, time: np.datetime64, beam: float, diffuse: float,
-        temperature_c: float, wind_ms: float, minutes: float,
-    ) -> None:  # fmt: skip
+        self,
+        light: StepLight,
+        *,
+        time: np.datetime64,
+        beam: float,
+        diffuse: float,
+        temperature_c: float,
+        wind_ms: float,
+        minutes: float,
+    ) -> None:
         self.light, self.time = light, time
         self.beam, self.diffuse = beam, diffuse
         self.temperature_c, self.wind_ms, self.minutes = temperature_c, wind_ms, minutes
@@ -182,7 +189,7 @@ def _add_load(load, beam, time, joules, peak, peak_time, energy):
         if load[i] > 0.0:
             E = load[i] * beam
             energy[i] += E * joules
-            if E > peak[i]:
+            if peak[i] < E:
                 peak[i] = E
                 peak_time[i] = time
 
@@ -213,9 +220,14 @@ class LoadTally:
         if moment.beam <= 0.0:
             return
         _add_load(
-            field.load, moment.beam, moment.time.astype("datetime64[s]").astype(np.int64),
-            60.0 * moment.minutes * self.weights[date], self.peak, self.peak_time, self.energy,
-        )  # fmt: skip
+            field.load,
+            moment.beam,
+            moment.time.astype("datetime64[s]").astype(np.int64),
+            60.0 * moment.minutes * self.weights[date],
+            self.peak,
+            self.peak_time,
+            self.energy,
+        )
         np.maximum(self.images, field.images, out=self.images)
 
     def result(self) -> dict[str, Any]:

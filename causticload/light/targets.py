@@ -53,9 +53,7 @@ def make_meanings(scene: Scene) -> Meanings:
     if mirrors.any():
         flat = scene.panels.flat[panel[mirrors]]
         # Numbers of flat panels first, then of smooth surfaces.
-        unit = np.where(
-            flat, panel[mirrors], len(scene.panels) + scene.surface[mirrors]
-        )
+        unit = np.where(flat, panel[mirrors], len(scene.panels) + scene.surface[mirrors])
         front[mirrors] = back[mirrors] = MIRROR - unit
     return Meanings(front, back, np.where(mirrors, chart, -1).astype(np.int32))
 
@@ -125,7 +123,13 @@ def _blurred_rays(B, depth, reach, ring, clearance, origin, direction):
 
 
 def find_targets(
-    beams: Beams, *, F: Facets, meanings: Meanings, tracer: Tracer, reach: Floats, ring: Ints,
+    beams: Beams,
+    *,
+    F: Facets,
+    meanings: Meanings,
+    tracer: Tracer,
+    reach: Floats,
+    ring: Ints,
     clearance_m: float,
 ) -> tuple[Ints, Ints]:
     """Send each beam's chief ray and three rays to the rim of its footprint.
@@ -168,15 +172,17 @@ def find_targets(
     triangle[:, :3] = hit.reshape(k, 3)
     code = np.empty(4 * k, np.int32)
     _codes(
-        triangle.ravel(), direction.reshape(-1, 3), F.face_normal, meanings.front,
-        meanings.back, code,
-    )  # fmt: skip
+        triangle.ravel(),
+        direction.reshape(-1, 3),
+        F.face_normal,
+        meanings.front,
+        meanings.back,
+        code,
+    )
     return code.reshape(k, 4), triangle
 
 
-def count_sun(
-    beams: Beams, *, tracer: Tracer, sun_direction: Floats, clearance_m: float
-) -> Ints:
+def count_sun(beams: Beams, *, tracer: Tracer, sun_direction: Floats, clearance_m: float) -> Ints:
     """Count how many of four points of each beam's start see the sun.
 
     Parameters

@@ -266,9 +266,7 @@ def _light_tubes(F, R, T, s, B, outcome):
                 )
 
 
-def light_tubes(
-    F: Facets, R: Floats, tubes: Tubes, *, sun_direction: Floats
-) -> tuple[Beams, Ints]:
+def light_tubes(F: Facets, R: Floats, tubes: Tubes, *, sun_direction: Floats) -> tuple[Beams, Ints]:
     """Light tubes by the sun.
 
     Parameters
@@ -332,7 +330,7 @@ def _image_errors(B, o, n, error, longest, depth):
         near, far = image_on_plane(
             B.start[k, :3], B.direction[k, :3], B.chief[k], B.frame[k], o[k], n[k], Q
         )
-        mid_near, mid_far = image_on_plane(
+        mid_near, _ = image_on_plane(
             B.start[k, 3:], B.direction[k, 3:], B.chief[k], B.frame[k], o[k], n[k], M
         )
         if near < 0.0 or mid_near < 0.0:
@@ -370,7 +368,11 @@ def image_errors(beams: Beams, *, o: Floats, n: Floats) -> tuple[Floats, Floats,
     k = len(beams.chief)
     error, length, depth = np.zeros((k, 3)), np.zeros((k, 3)), np.empty(k)
     _image_errors(
-        beams, np.ascontiguousarray(o, dtype=float), np.ascontiguousarray(n, dtype=float),
-        error, length, depth,
-    )  # fmt: skip
+        beams,
+        np.ascontiguousarray(o, dtype=float),
+        np.ascontiguousarray(n, dtype=float),
+        error,
+        length,
+        depth,
+    )
     return error, length, depth

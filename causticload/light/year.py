@@ -35,9 +35,11 @@ MakeAccumulators = Callable[[LitScene, DayPlan], Sequence[Accumulator]]
 
 
 def run_day(
-    lit: LitScene, day: DayPlan, make_accumulators: MakeAccumulators,
+    lit: LitScene,
+    day: DayPlan,
+    make_accumulators: MakeAccumulators,
     stopped: Callable[[], bool] = lambda: False,
-) -> DayResult | None:  # fmt: skip
+) -> DayResult | None:
     """Work off one representative day.
 
     Parameters
@@ -76,10 +78,14 @@ def run_day(
         np.maximum.at(top, lit.point_surface, field.load)
         for d in range(dates):
             moment = Moment(
-                light, time=day.times[d, k], beam=float(day.beam[d, k]),
-                diffuse=float(day.diffuse[d, k]), temperature_c=float(day.temperature_c[d, k]),
-                wind_ms=float(day.wind_ms[d, k]), minutes=day.step_s / 60.0,
-            )  # fmt: skip
+                light,
+                time=day.times[d, k],
+                beam=float(day.beam[d, k]),
+                diffuse=float(day.diffuse[d, k]),
+                temperature_c=float(day.temperature_c[d, k]),
+                wind_ms=float(day.wind_ms[d, k]),
+                minutes=day.step_s / 60.0,
+            )
             for accumulator in accumulators:
                 accumulator.add(moment, date=d)
             worst[d, k] = top * moment.beam

@@ -20,9 +20,7 @@ MARK = (20, 20, 20, 255)
 Colours = NDArray[np.uint8]
 
 
-def map_colours(
-    values: Floats, *, low: float, high: float, name: str = LOAD_MAP
-) -> Colours:
+def map_colours(values: Floats, *, low: float, high: float, name: str = LOAD_MAP) -> Colours:
     """Colours of values on a linear scale.
 
     Parameters

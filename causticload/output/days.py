@@ -102,8 +102,11 @@ def _pack(day: DayResult) -> dict[str, Any]:
     """Arrays as they are; plain records as one JSON text, no pickles."""
     arrays: dict[str, Any] = {"worst": day.worst}
     records: dict[str, Any] = {
-        "index": day.index, "ledger": day.ledger, "steps": day.steps, "names": {},
-    }  # fmt: skip
+        "index": day.index,
+        "ledger": day.ledger,
+        "steps": day.steps,
+        "names": {},
+    }
     for name, kept in day.kept.items():
         records["names"][name] = list(kept)
         for k, (key, value) in enumerate(kept.items()):
@@ -134,6 +137,9 @@ def _unpack(file: Any) -> DayResult:
                     n.rpartition("/")[2]: file[n] for n in file if n.startswith(stem + "/")
                 }
     return DayResult(
-        index=records["index"], kept=kept, worst=file["worst"], ledger=records["ledger"],
+        index=records["index"],
+        kept=kept,
+        worst=file["worst"],
+        ledger=records["ledger"],
         steps=records["steps"],
-    )  # fmt: skip
+    )

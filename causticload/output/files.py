@@ -36,7 +36,7 @@ def write_whole(path: Path, write: Callable[[Path], Any]) -> None:
     try:
         path.parent.mkdir(parents=True, exist_ok=True)
         write(temporary)
-        os.replace(temporary, path)
+        temporary.replace(path)
     except OSError as error:
         raise _cannot_write(path, error) from error
     finally:

@@ -57,9 +57,7 @@ def save_year(year: Year, path: Path) -> Path:
     high = round_end(float(peak.max(initial=0.0)))
     cells = meshes.cells_of(scene)
     _save_arrays(year, scene, cells, path, notes)
-    coloured = meshes.coloured_cells(
-        cells, peak, high=high, flagged=flagged, shown=peak > 0.0
-    )
+    coloured = meshes.coloured_cells(cells, peak, high=high, flagged=flagged, shown=peak > 0.0)
     facade = meshes.coloured_facade(
         scene, year.contribution, high=round_end(float(year.contribution.max(initial=0.0)))
     )
@@ -153,7 +151,9 @@ def _save_arrays(
             arrays[label] = joined(
                 lambda r, k=kept, n=name: getattr(r, k).get(n, np.full(len(r.areas), np.nan))
             )
-    receivers = meshes.cell_grid(cells, arrays, {**notes, "receivers": "; ".join(r.name for r in ordered)})
+    receivers = meshes.cell_grid(
+        cells, arrays, {**notes, "receivers": "; ".join(r.name for r in ordered)}
+    )
     write_whole(path / "receivers.vtp", receivers.save)
     r = scene.reflectors
     facade = meshes.facade_grid(
@@ -196,9 +196,15 @@ def _save_panels(scene: Scene, path: Path) -> None:
     def write(target: Path) -> None:
         with target.open("wb") as file:
             np.savez_compressed(
-                file, surface=p.surface, area=p.area, centroid=p.centroid + scene.origin,
-                normal=p.normal, flat=p.flat, width_axis=p.width_axis, size=p.size,
-            )  # fmt: skip
+                file,
+                surface=p.surface,
+                area=p.area,
+                centroid=p.centroid + scene.origin,
+                normal=p.normal,
+                flat=p.flat,
+                width_axis=p.width_axis,
+                size=p.size,
+            )
 
     write_whole(path / "panels.npz", write)
 
@@ -261,7 +267,9 @@ def read_year(path: str | Path) -> Year:
     try:
         return _rebuild(folder, summary)
     except CausticloadError as error:
-        raise ResultError(error.message, where=str(folder / error.where), hint=error.hint) from error
+        raise ResultError(
+            error.message, where=str(folder / error.where), hint=error.hint
+        ) from error
     except (OSError, KeyError, ValueError, TypeError) as error:
         raise ResultError(
             f"a file is missing or broken: {error}",

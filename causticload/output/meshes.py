@@ -54,17 +54,26 @@ def cells_of(scene: Scene, charts: Sequence[Chart] | None = None) -> Cells:
         i, j = np.nonzero(c.cell >= 0)
         order = np.argsort(c.cell[i, j])
         i, j = i[order], j[order]
-        nu, nv = c.cell.shape
+        nv = c.cell.shape[1]
         used, inverse = np.unique(
-            np.stack([i * (nv + 1) + j, (i + 1) * (nv + 1) + j, (i + 1) * (nv + 1) + j + 1,
-                      i * (nv + 1) + j + 1], axis=1),
+            np.stack(
+                [
+                    i * (nv + 1) + j,
+                    (i + 1) * (nv + 1) + j,
+                    (i + 1) * (nv + 1) + j + 1,
+                    i * (nv + 1) + j + 1,
+                ],
+                axis=1,
+            ),
             return_inverse=True,
-        )  # fmt: skip
+        )
         a, b = np.divmod(used, nv + 1)
         vertices.append(
-            c.origin + scene.origin
-            + (a * c.spacing)[:, None] * c.u + (b * c.spacing)[:, None] * c.v
-        )  # fmt: skip
+            c.origin
+            + scene.origin
+            + (a * c.spacing)[:, None] * c.u
+            + (b * c.spacing)[:, None] * c.v
+        )
         quads.append(inverse.reshape(-1, 4) + base)
         normals.append(np.broadcast_to(c.normal, (len(i), 3)))
         spacing.append(np.full(len(i), c.spacing))
@@ -72,9 +81,11 @@ def cells_of(scene: Scene, charts: Sequence[Chart] | None = None) -> Cells:
     if not quads:
         return Cells(np.zeros((0, 3)), np.zeros((0, 4), int), np.zeros((0, 3)), np.zeros(0))
     return Cells(
-        np.concatenate(vertices), np.concatenate(quads), np.concatenate(normals),
+        np.concatenate(vertices),
+        np.concatenate(quads),
+        np.concatenate(normals),
         np.concatenate(spacing),
-    )  # fmt: skip
+    )
 
 
 def cell_grid(cells: Cells, arrays: Mapping[str, Any], notes: Mapping[str, str]) -> pv.PolyData:
@@ -98,9 +109,7 @@ def cell_grid(cells: Cells, arrays: Mapping[str, Any], notes: Mapping[str, str])
     return _with_arrays(pv.PolyData(cells.vertices, faces), arrays, notes)
 
 
-def facade_grid(
-    scene: Scene, arrays: Mapping[str, Any], notes: Mapping[str, str]
-) -> pv.PolyData:
+def facade_grid(scene: Scene, arrays: Mapping[str, Any], notes: Mapping[str, str]) -> pv.PolyData:
     """Build the reflectors' triangles with one value a triangle.
 
     Parameters
@@ -171,9 +180,11 @@ def _quad_mesh(quads: Floats, colours: Colours) -> trimesh.Trimesh:
     n = len(quads)
     faces = (np.arange(n)[:, None, None] * 4 + np.array([[0, 1, 2], [0, 2, 3]])).reshape(-1, 3)
     return trimesh.Trimesh(
-        vertices=quads.reshape(-1, 3), faces=faces, vertex_colors=np.repeat(colours, 4, axis=0),
+        vertices=quads.reshape(-1, 3),
+        faces=faces,
+        vertex_colors=np.repeat(colours, 4, axis=0),
         process=False,
-    )  # fmt: skip
+    )
 
 
 def flag_marks(cells: Cells, flagged: Bools) -> Floats:
@@ -202,9 +213,7 @@ def flag_marks(cells: Cells, flagged: Bools) -> Floats:
     rim = count[inverse.ravel()] == 1
     ends = cells.vertices[edges[rim]]
     lift = 2.0 * RAISE_M * np.repeat(n, 4, axis=0)[rim]
-    ribbons = _ribbons(
-        ends + lift[:, None], np.repeat(n, 4, axis=0)[rim], np.repeat(width, 4)[rim]
-    )
+    ribbons = _ribbons(ends + lift[:, None], np.repeat(n, 4, axis=0)[rim], np.repeat(width, 4)[rim])
     corner = cells.vertices[q]
     # A stroke along the diagonal of every few cells, by where the cell lies: an even pattern.
     place = np.round(corner.mean(axis=1) / cells.spacing[flagged][:, None]).astype(int)
@@ -249,9 +258,11 @@ def coloured_facade(scene: Scene, contribution: Floats, *, high: float) -> trime
 
 def _triangle_mesh(T: Floats, colours: Colours) -> trimesh.Trimesh:
     return trimesh.Trimesh(
-        vertices=T.reshape(-1, 3), faces=np.arange(3 * len(T)).reshape(-1, 3),
-        vertex_colors=np.repeat(colours, 3, axis=0), process=False,
-    )  # fmt: skip
+        vertices=T.reshape(-1, 3),
+        faces=np.arange(3 * len(T)).reshape(-1, 3),
+        vertex_colors=np.repeat(colours, 3, axis=0),
+        process=False,
+    )
 
 
 def surroundings(scene: Scene) -> trimesh.Trimesh:
@@ -285,9 +296,7 @@ def write_ply(mesh: trimesh.Trimesh, path: Path, notes: Mapping[str, str]) -> No
         One comment each.
     """
     data = mesh.export(file_type="ply", encoding="binary")
-    comments = "".join(
-        f"comment {key}: {' '.join(text.split())}\n" for key, text in notes.items()
-    )
+    comments = "".join(f"comment {key}: {' '.join(text.split())}\n" for key, text in notes.items())
     head, rest = data.split(b"\n", 2)[:2], data.split(b"\n", 2)[2]
     text = comments.encode("ascii", "replace")
     path.write_bytes(b"\n".join(head) + b"\n" + text + rest)
@@ -301,9 +310,7 @@ def _linear(display: Colours) -> Colours:
     return np.round(255.0 * share).astype(np.uint8)
 
 
-def write_glb(
-    parts: Mapping[str, trimesh.Trimesh], path: Path, notes: Mapping[str, str]
-) -> None:
+def write_glb(parts: Mapping[str, trimesh.Trimesh], path: Path, notes: Mapping[str, str]) -> None:
     """Write coloured parts as one GLB, turned to its Y-up axes; the scale is in its extras.
 
     Parameters
@@ -340,6 +347,4 @@ def write_glb(
                 primitive["material"] = 0
         tree.setdefault("asset", {})["extras"] = dict(notes)
 
-    path.write_bytes(
-        trimesh.exchange.gltf.export_glb(scene, tree_postprocessor=double_sided)
-    )
+    path.write_bytes(trimesh.exchange.gltf.export_glb(scene, tree_postprocessor=double_sided))

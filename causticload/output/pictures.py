@@ -57,17 +57,24 @@ def draw_scale(path: Path, *, high: float, limits: Sequence[float], label: str) 
     figure = new_figure(6.0, 1.25)
     axes = figure.subplots()
     bar = figure.colorbar(
-        mpl.cm.ScalarMappable(mpl.colors.Normalize(0.0, high), LOAD_MAP), cax=axes,
-        orientation="horizontal", label=f"{label} (W/m²)",
-    )  # fmt: skip
+        mpl.cm.ScalarMappable(mpl.colors.Normalize(0.0, high), LOAD_MAP),
+        cax=axes,
+        orientation="horizontal",
+        label=f"{label} (W/m²)",
+    )
     for limit in limits:
         if limit <= high:
             bar.ax.axvline(limit, color="white", linewidth=3.0)
             bar.ax.axvline(limit, color="black", linewidth=1.2)
             bar.ax.annotate(
-                f"{limit:,.0f}", (limit, 1.0), xycoords=("data", "axes fraction"),
-                xytext=(0, 3), textcoords="offset points", ha="center", fontsize=8,
-            )  # fmt: skip
+                f"{limit:,.0f}",
+                (limit, 1.0),
+                xycoords=("data", "axes fraction"),
+                xytext=(0, 3),
+                textcoords="offset points",
+                ha="center",
+                fontsize=8,
+            )
     figure.savefig(path, format="png", dpi=150)
 
 
@@ -142,14 +149,25 @@ class _View:
         )
         mesh.cell_data[label] = values[lit]
         self.plot.add_mesh(
-            mesh, scalars=label, cmap=LOAD_MAP, clim=(0.0, round_end(float(values.max()))),
+            mesh,
+            scalars=label,
+            cmap=LOAD_MAP,
+            clim=(0.0, round_end(float(values.max()))),
             lighting=False,
             scalar_bar_args={
-                "color": "black", "title": label, "n_labels": 5, "fmt": "%.0f", "vertical": False,
-                "position_x": 0.3, "position_y": 0.04, "width": 0.4, "height": 0.07,
-                "title_font_size": 15, "label_font_size": 13,
+                "color": "black",
+                "title": label,
+                "n_labels": 5,
+                "fmt": "%.0f",
+                "vertical": False,
+                "position_x": 0.3,
+                "position_y": 0.04,
+                "width": 0.4,
+                "height": 0.07,
+                "title_font_size": 15,
+                "label_font_size": 13,
             },
-        )  # fmt: skip
+        )
         marks = flag_marks(cells, over)
         if len(marks):
             k = len(marks)
@@ -161,8 +179,10 @@ class _View:
             if limit is not None:
                 self.plot.add_text(
                     f"outlined and hatched: over {limit:,.0f} W/m² reflected",
-                    position="lower_right", font_size=7, color="black",
-                )  # fmt: skip
+                    position="lower_right",
+                    font_size=7,
+                    color="black",
+                )
 
     def aim(self, hot: Floats) -> None:
         """Look from high on the side of the light, past the hot spot, at the reflectors."""
@@ -184,9 +204,11 @@ class _View:
         self.plot.camera.clipping_range = (0.05 * size, 40.0 * size)
         north = np.radians(0.0) - scene.north_rad
         arrow = pv.Arrow(
-            start=(0, 0, 0), direction=(float(np.sin(north)), float(np.cos(north)), 0.0),
-            tip_radius=0.16, shaft_radius=0.05,
-        )  # fmt: skip
+            start=(0, 0, 0),
+            direction=(float(np.sin(north)), float(np.cos(north)), 0.0),
+            tip_radius=0.16,
+            shaft_radius=0.05,
+        )
         self.plot.add_orientation_widget(arrow, color="black", viewport=(0.9, 0.82, 1.0, 0.98))
         self.plot.add_text("N", position=(0.955, 0.80), viewport=True, font_size=8, color="black")
 
@@ -227,9 +249,7 @@ def year_pictures(year: Year, folder: Path, *, high: float) -> list[Path]:
     return [path]
 
 
-def plan_picture(
-    grounds: Sequence[ReceiverYear], path: Path, *, year: Year, high: float
-) -> None:
+def plan_picture(grounds: Sequence[ReceiverYear], path: Path, *, year: Year, high: float) -> None:
     """Draw a plan of peak reflected load with north, a scale bar and contours of the limits.
 
     Parameters
@@ -252,16 +272,23 @@ def plan_picture(
     order = np.argsort(load)
     image[tuple(index[order].T)] = load[order]
     extent = (
-        low[0] - h / 2, low[0] + (image.shape[0] - 0.5) * h,
-        low[1] - h / 2, low[1] + (image.shape[1] - 0.5) * h,
-    )  # fmt: skip
+        low[0] - h / 2,
+        low[0] + (image.shape[0] - 0.5) * h,
+        low[1] - h / 2,
+        low[1] + (image.shape[1] - 0.5) * h,
+    )
     aspect = (extent[3] - extent[2]) / (extent[1] - extent[0])
     figure = new_figure(8.0, min(10.0, max(4.0, 7.0 * aspect + 1.2)))
     axes = figure.subplots()
     shown = axes.imshow(
-        image.T, origin="lower", extent=extent, cmap=LOAD_MAP, vmin=0.0, vmax=high,
+        image.T,
+        origin="lower",
+        extent=extent,
+        cmap=LOAD_MAP,
+        vmin=0.0,
+        vmax=high,
         interpolation="nearest",
-    )  # fmt: skip
+    )
     figure.colorbar(shown, ax=axes, shrink=0.8, label="Peak reflected load in the year (W/m²)")
     _draw_scene_outline(axes, year.scene)
     axes.set_xlabel("model x (m)")
@@ -281,7 +308,10 @@ def _draw_scene_outline(axes: Any, scene: Scene | None) -> None:
     from matplotlib.collections import LineCollection
 
     reflects = scene.panel >= 0
-    for mask, colour, width in ((~reflects & (scene.chart < 0), "0.55", 0.4), (reflects, "black", 0.8)):
+    for mask, colour, width in (
+        (~reflects & (scene.chart < 0), "0.55", 0.4),
+        (reflects, "black", 0.8),
+    ):
         T = scene.triangles[mask][:, :, :2] + scene.origin[:2]
         lines = np.stack([T, np.roll(T, -1, axis=1)], axis=2).reshape(-1, 2, 2)
         axes.add_collection(LineCollection(list(lines), colors=colour, linewidths=width))
@@ -301,10 +331,18 @@ def north_arrow(axes: Any, model_north: float) -> None:
     tip = 0.06 * np.array([np.sin(angle), np.cos(angle)])
     at = np.array([0.93, 0.9])
     axes.annotate(
-        "", xy=at + tip, xytext=at - tip, xycoords="axes fraction",
+        "",
+        xy=at + tip,
+        xytext=at - tip,
+        xycoords="axes fraction",
         arrowprops={"arrowstyle": "-|>", "color": "black", "lw": 1.6},
-    )  # fmt: skip
+    )
     axes.text(
-        *(at + 1.45 * tip), "N", transform=axes.transAxes, ha="center", va="center", fontsize=9,
+        *(at + 1.45 * tip),
+        "N",
+        transform=axes.transAxes,
+        ha="center",
+        va="center",
+        fontsize=9,
         bbox={"boxstyle": "circle,pad=0.15", "fc": "white", "ec": "none", "alpha": 0.8},
-    )  # fmt: skip
+    )

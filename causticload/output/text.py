@@ -19,9 +19,13 @@ MOST_SEASONS = 8
 
 def _wrap(text: str, indent: str = "  ", first: str | None = None) -> str:
     return fill(
-        text, WIDTH, initial_indent=indent if first is None else first, subsequent_indent=indent,
-        break_on_hyphens=False, break_long_words=False,
-    )  # fmt: skip
+        text,
+        WIDTH,
+        initial_indent=indent if first is None else first,
+        subsequent_indent=indent,
+        break_on_hyphens=False,
+        break_long_words=False,
+    )
 
 
 def _listed(title: str, lines: Iterable[str]) -> list[str]:
@@ -65,9 +69,7 @@ def summarise_year(year: Year) -> str:
     for r in sorted(s["receivers"], key=lambda r: -r["peak_reflected_W_m2"]):
         when = r["peak_time"]
         time = words.moment(np.datetime64(when.rstrip("Z")), zone) if when else "never lit"
-        lines.append(
-            f"  {r['name']:<{width}}  {words.load(r['peak_reflected_W_m2']):>12}  {time}"
-        )
+        lines.append(f"  {r['name']:<{width}}  {words.load(r['peak_reflected_W_m2']):>12}  {time}")
     lines += _how_sure(s)
     lines += _listed("Assumed", s["assumed"])
     lines += _listed("Cautions", s["cautions"])
@@ -98,7 +100,7 @@ def describe_season(season: Season, worst: Episode, zone: str) -> list[str]:
     place = check.place if check else max(worst.path, key=lambda p: p.peak).place
     time = check.time if check else worst.peak_time
     lines = [
-        f"{season.number}. {season.receiver}: over the criterion \"{season.criterion}\" "
+        f'{season.number}. {season.receiver}: over the criterion "{season.criterion}" '
         f"({season.protects}, {words.load(worst.limit)})",
         _wrap(
             f"{words.spans(season)}, between {season.clock[0]} and {season.clock[1]} local clock "
@@ -212,7 +214,9 @@ def summarise_instant(instant: Instant) -> str:
         if top < 0 or r.reflected[top] <= 0.0:
             lines.append(f"  {r.name:<{width}}  no reflected light")
             continue
-        where = words.place((float(r.points[top][0]), float(r.points[top][1]), float(r.points[top][2])))
+        where = words.place(
+            (float(r.points[top][0]), float(r.points[top][1]), float(r.points[top][2]))
+        )
         lines.append(
             f"  {r.name:<{width}}  {words.load(float(r.reflected[top])):>12}  "
             f"{r.reflected[top] / sun.beam:5.2f} suns  {r.images[top]} images  at {where}"
@@ -264,7 +268,9 @@ def summarise_inspect(report: Mapping[str, Any]) -> str:
         )
     checks: Sequence[Mapping[str, Any]] = report.get("tessellation", [])
     lines += _listed("Tessellation check", [f"{c['surface']}: {c['sentence']}" for c in checks])
-    lines += _listed("Curvature", [f"{c['surface']}: {c['sentence']}" for c in report.get("curvature", [])])
+    lines += _listed(
+        "Curvature", [f"{c['surface']}: {c['sentence']}" for c in report.get("curvature", [])]
+    )
     lines += _listed(
         "Found in the model",
         [f"{f['message']} {f.get('hint', '')}".strip() for f in report.get("faults", [])],

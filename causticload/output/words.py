@@ -2,7 +2,7 @@
 
 from __future__ import annotations
 
-from datetime import date, datetime, timezone
+from datetime import UTC, date, datetime
 from zoneinfo import ZoneInfo
 
 import numpy as np
@@ -10,9 +10,19 @@ import numpy as np
 from causticload.hazard.findings import Season
 
 MONTHS = (
-    "January", "February", "March", "April", "May", "June", "July", "August", "September",
-    "October", "November", "December",
-)  # fmt: skip
+    "January",
+    "February",
+    "March",
+    "April",
+    "May",
+    "June",
+    "July",
+    "August",
+    "September",
+    "October",
+    "November",
+    "December",
+)
 NO_EXCEEDANCE = "No exceedance found under these assumptions."
 
 
@@ -32,7 +42,7 @@ def local(time: np.datetime64, zone: str) -> datetime:
         With its offset.
     """
     seconds = int(time.astype("datetime64[s]").astype(np.int64))
-    return datetime.fromtimestamp(seconds, timezone.utc).astimezone(ZoneInfo(zone))
+    return datetime.fromtimestamp(seconds, UTC).astimezone(ZoneInfo(zone))
 
 
 def moment(time: np.datetime64, zone: str) -> str:

@@ -1,8 +1,8 @@
 """Small scenes for the tests of light, built from arrays: no files, no study."""
 
 import numpy as np
-
 from causticload.light.bvh import build_tracer
+
 from causticload.light.facets import make_facets
 from causticload.light.prepare import LitScene
 from causticload.light.splat import make_grids
@@ -32,7 +32,10 @@ def grid_triangles(values):
     """Two triangles for each cell of an (n, m, 3) grid of corner values."""
     a, b, c, d = values[:-1, :-1], values[1:, :-1], values[1:, 1:], values[:-1, 1:]
     return np.concatenate(
-        [np.stack([a, b, c], axis=2).reshape(-1, 3, 3), np.stack([a, c, d], axis=2).reshape(-1, 3, 3)]
+        [
+            np.stack([a, b, c], axis=2).reshape(-1, 3, 3),
+            np.stack([a, c, d], axis=2).reshape(-1, 3, 3),
+        ]
     )
 
 
@@ -51,21 +54,32 @@ def plane_chart(centre, normal, *, half, spacing, u=None, surface=1):
     i, j = (x.ravel() + 0.5 for x in np.indices((count, count)))
     points = origin + (i * spacing)[:, None] * u + (j * spacing)[:, None] * v
     chart = Chart(
-        surface=surface, origin=origin, u=u, v=v, normal=n, spacing=spacing,
-        cell=np.arange(count * count, dtype=np.int32).reshape(count, count), points=points,
+        surface=surface,
+        origin=origin,
+        u=u,
+        v=v,
+        normal=n,
+        spacing=spacing,
+        cell=np.arange(count * count, dtype=np.int32).reshape(count, count),
+        points=points,
         areas=np.full(count * count, spacing**2),
-    )  # fmt: skip
-    size = count * spacing
-    corners = np.array(
-        [origin, origin + size * u, origin + size * (u + v), origin + size * v]
     )
+    size = count * spacing
+    corners = np.array([origin, origin + size * u, origin + size * (u + v), origin + size * v])
     return chart, corners[[[0, 1, 2], [0, 2, 3]]]
 
 
 def lit_scene(
-    mirrors, normals=None, *, receiver=None, obstacles=None, R=None, smooth=True, engine="auto",
+    mirrors,
+    normals=None,
+    *,
+    receiver=None,
+    obstacles=None,
+    R=None,
+    smooth=True,
+    engine="auto",
     mirror_units=None,
-):  # fmt: skip
+):
     """A prepared scene of mirrors, one receiver and obstacles.
 
     ``mirrors`` (k, 3, 3) with corner ``normals`` (k, 3, 3), face normals if None; ``receiver`` is
@@ -91,8 +105,13 @@ def lit_scene(
     p = int(panel.max(initial=-1)) + 1
     first = np.array([np.flatnonzero(panel == q)[0] for q in range(p)], dtype=int)
     scene = Scene(
-        origin=np.zeros(3), north_rad=0.0, triangles=triangles, surface=kind, panel=panel,
-        chart=np.where(kind == 1, 0, -1).astype(np.int32), corner_normals=corner_normals,
+        origin=np.zeros(3),
+        north_rad=0.0,
+        triangles=triangles,
+        surface=kind,
+        panel=panel,
+        chart=np.where(kind == 1, 0, -1).astype(np.int32),
+        corner_normals=corner_normals,
         curvature=np.zeros((len(kind), 3, 2)),
         surfaces=(
             Surface(name="mirror", file="", roles=frozenset({"reflector"})),
@@ -100,12 +119,16 @@ def lit_scene(
             Surface(name="obstacle", file="", roles=frozenset({"obstruction"})),
         ),
         panels=Panels(
-            surface=np.zeros(p, np.int32), area=np.ones(p), centroid=triangles[first].mean(axis=1),
-            normal=corner_normals[first, 0], flat=np.full(p, not smooth),
-            width_axis=np.zeros((p, 3)), size=np.ones((p, 2)),
+            surface=np.zeros(p, np.int32),
+            area=np.ones(p),
+            centroid=triangles[first].mean(axis=1),
+            normal=corner_normals[first, 0],
+            flat=np.full(p, not smooth),
+            width_axis=np.zeros((p, 3)),
+            size=np.ones((p, 2)),
         ),
         charts=charts,
-    )  # fmt: skip
+    )
     F = make_facets(scene)
     sheet_of = np.where(panel >= 0, 0, -1).astype(np.int32)
     facet = scene.reflectors
@@ -115,16 +138,25 @@ def lit_scene(
     n = sum(len(c.areas) for c in charts)
     chart = charts[0] if charts else None
     return LitScene(
-        scene=scene, F=F, grids=make_grids(charts), meanings=make_meanings(scene),
+        scene=scene,
+        F=F,
+        grids=make_grids(charts),
+        meanings=make_meanings(scene),
         tracer=build_tracer(triangles, engine=engine),
         base=cut_to_length(F, whole_facets(F, facet, sheet_of[facet]), longest_m=4.0),
-        disc=UniformDisc(), R=table, slope_error=np.zeros(1), scatter=np.zeros(1),
-        first_sheet=np.ones(1), sheet_of=sheet_of,
+        disc=UniformDisc(),
+        R=table,
+        slope_error=np.zeros(1),
+        scatter=np.zeros(1),
+        first_sheet=np.ones(1),
+        sheet_of=sheet_of,
         points=chart.points if charts else np.zeros((0, 3)),
         point_normals=np.tile(chart.normal, (n, 1)) if charts else np.zeros((0, 3)),
         point_areas=chart.areas if charts else np.zeros(0),
-        point_surface=np.ones(n, np.int32), mirror_point=np.zeros(n, bool), clearance_m=1e-3,
-    )  # fmt: skip
+        point_surface=np.ones(n, np.int32),
+        mirror_point=np.zeros(n, bool),
+        clearance_m=1e-3,
+    )
 
 
 def quadric_mirror(k_xx, k_xy, k_yy, *, half=0.2, cells=8):

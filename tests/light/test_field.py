@@ -136,7 +136,13 @@ def test_a_shadow_falls_where_geometry_says():
     # A flat mirror, and a half-plane that keeps the sun off its left half.
     pane = grid_triangles(np.array([[[-2, 0, 1], [-2, 0, 3]], [[2, 0, 1], [2, 0, 3]]], float))
     s = sun(180, 45)
-    cover = np.array([[[-9, -0.05, -9], [0, -0.05, -9], [0, -0.05, 9]], [[-9, -0.05, -9], [0, -0.05, 9], [-9, -0.05, 9]]], float)
+    cover = np.array(
+        [
+            [[-9, -0.05, -9], [0, -0.05, -9], [0, -0.05, 9]],
+            [[-9, -0.05, -9], [0, -0.05, 9], [-9, -0.05, 9]],
+        ],
+        float,
+    )
     lit = lit_scene(pane, receiver=plaza(6.0, 0.1), obstacles=cover, smooth=False)
     field = solve(lit, s)
     x, y = lit.points[:, 0], lit.points[:, 1]
@@ -192,13 +198,23 @@ def test_ray_count_agrees_with_tubes_at_the_peak(azimuth, elevation):
         r, turn = radius * np.sqrt(k / 150), k * 2.39996
         disc = peak + np.stack([r * np.cos(turn), r * np.sin(turn), 0 * r], axis=1)
         light = solve_points(
-            lit, sun_direction=s, sun_radius=SUN, points=disc, normals=np.tile(UP, (150, 1)),
+            lit,
+            sun_direction=s,
+            sun_radius=SUN,
+            points=disc,
+            normals=np.tile(UP, (150, 1)),
             bounced=field.bounced,
-        )  # fmt: skip
+        )
         count = count_spot(
-            lit, sun_direction=s, sun_radius=SUN, centre=peak, normal=np.array(UP),
-            radius_m=radius, rays=300_000, seed=7,
-        )  # fmt: skip
+            lit,
+            sun_direction=s,
+            sun_radius=SUN,
+            centre=peak,
+            normal=np.array(UP),
+            radius_m=radius,
+            rays=300_000,
+            seed=7,
+        )
         assert count.hits > 300
         assert abs(light.load.mean() - count.mean) < 3.5 * count.standard_error
 
@@ -209,9 +225,16 @@ def test_ray_count_error_is_honest():
     lit = lit_scene(*wall(), receiver=plaza())
     counts = [
         count_spot(
-            lit, sun_direction=sun(180, 45), sun_radius=SUN, centre=np.array([0.0, 6.0, 0.0]),
-            normal=np.array(UP), radius_m=0.5, rays=20_000, seed=seed, second=False,
-        )  # fmt: skip
+            lit,
+            sun_direction=sun(180, 45),
+            sun_radius=SUN,
+            centre=np.array([0.0, 6.0, 0.0]),
+            normal=np.array(UP),
+            radius_m=0.5,
+            rays=20_000,
+            seed=seed,
+            second=False,
+        )
         for seed in range(12)
     ]
     scatter = np.std([c.mean for c in counts], ddof=1)
@@ -225,9 +248,15 @@ def test_ray_count_refuses_bad_arguments(radius, rays):
     lit = lit_scene(*wall(), receiver=plaza())
     with pytest.raises(InputError):
         count_spot(
-            lit, sun_direction=sun(180, 45), sun_radius=SUN, centre=np.zeros(3),
-            normal=np.array(UP), radius_m=radius, rays=rays, seed=1,
-        )  # fmt: skip
+            lit,
+            sun_direction=sun(180, 45),
+            sun_radius=SUN,
+            centre=np.zeros(3),
+            normal=np.array(UP),
+            radius_m=radius,
+            rays=rays,
+            seed=1,
+        )
 
 
 def test_contributions_of_panels_add_up_to_solving_one_at_a_time():

@@ -58,9 +58,12 @@ def test_local_law_of_a_curved_mirror(case, expected):
     r = mirrored(s)
     off_the_seams = [2.1e-4, 0.9e-4, 0.0]  # the origin is a corner of the mesh
     light = solve_points(
-        lit, sun_direction=s, sun_radius=POINT_SUN, points=(D * r + off_the_seams)[None],
+        lit,
+        sun_direction=s,
+        sun_radius=POINT_SUN,
+        points=(D * r + off_the_seams)[None],
         normals=-r[None],
-    )  # fmt: skip
+    )
     # tubes of 5 mm on curvatures that change by 1e-4 of themselves over that length
     assert light.load[0] == pytest.approx(expected, rel=2e-3)
     assert light.images[0] == 1
@@ -224,9 +227,12 @@ def test_grid_keeps_energy_and_agrees_with_points():
     for i in hot:
         around = lit.points[i] + np.pad(shift, ((0, 0), (0, 1)))
         light = solve_points(
-            lit, sun_direction=s, sun_radius=SUN, points=around,
+            lit,
+            sun_direction=s,
+            sun_radius=SUN,
+            points=around,
             normals=np.tile([0.0, 0.0, 1.0], (len(around), 1)),
-        )  # fmt: skip
+        )
         assert field.load[i] == pytest.approx(light.load.mean(), rel=0.04)
 
 
@@ -248,13 +254,18 @@ def test_no_point_is_brighter_than_the_sun_in_the_mirror():
 
 def test_two_mirrors_lay_light_down_once_for_each_reflectance():
     # A periscope: 45° mirror at the origin, another above it, then a wall. Reflectance 0.5 twice.
-    lower = np.array([[[-1, -1, -1], [1, -1, 1], [1, 1, 1]], [[-1, -1, -1], [1, 1, 1], [-1, 1, -1]]], float)
+    lower = np.array(
+        [[[-1, -1, -1], [1, -1, 1], [1, 1, 1]], [[-1, -1, -1], [1, 1, 1], [-1, 1, -1]]], float
+    )
     upper = lower + np.array([0.0, 0.0, 10.0])
     chart = plane_chart([8.0, 0.0, 10.0], [-1.0, 0.0, 0.0], half=3.0, spacing=0.1)
     lit = lit_scene(
-        np.concatenate([lower, upper]), receiver=chart, R=0.5, smooth=False,
+        np.concatenate([lower, upper]),
+        receiver=chart,
+        R=0.5,
+        smooth=False,
         mirror_units=np.array([0, 0, 1, 1]),
-    )  # fmt: skip
+    )
     s = np.array([-1.0, 0.0, 0.0])
     field = solve_field(lit, sun_direction=s, sun_radius=SUN)
     middle = np.linalg.norm(lit.points - [8.0, 0.0, 10.0], axis=1) < 0.5
@@ -293,9 +304,12 @@ def test_crossed_planes_of_incidence_at_brewsters_angle_pass_nothing():
         second = plate(6.0 * d1, d1, d2)
         chart = plane_chart(6.0 * d1 + 5.0 * d2, -d2, half=1.0, spacing=0.1)
         lit = lit_scene(
-            np.concatenate([first, second]), receiver=chart, R=np.stack([R_s, R_p]), smooth=False,
+            np.concatenate([first, second]),
+            receiver=chart,
+            R=np.stack([R_s, R_p]),
+            smooth=False,
             mirror_units=np.array([0, 0, 1, 1]),
-        )  # fmt: skip
+        )
         field = solve_field(lit, sun_direction=-d0, sun_radius=SUN)
         middle = np.linalg.norm(lit.points - chart[0].points.mean(axis=0), axis=1) < 0.3
         loads[name] = np.median(field.load[middle])

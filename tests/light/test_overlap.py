@@ -84,9 +84,7 @@ def test_flux_density_integrates_to_one():
     D, h = 40.0, 0.01
     T = np.array([[0.1, 0.05], [0.9, 0.2], [0.3, 0.8]])
     x = np.arange(-1.0, 2.0, h) + h / 2
-    total = sum(
-        flux_density(*(T - (px, py)).ravel(), D, radii, weights) for px in x for py in x
-    )
+    total = sum(flux_density(*(T - (px, py)).ravel(), D, radii, weights) for px in x for py in x)
     assert total * h * h == pytest.approx(1.0, abs=1e-4)  # midpoint rule at h = rho/40
 
 
