@@ -20,7 +20,7 @@ from typing import NamedTuple
 import numpy as np
 from numba import njit
 
-from causticload.light.overlap import flux_density
+from causticload.light.overlap import flux_density, share_inside_line
 from causticload.light.tubes import Beams, image_on_plane
 from causticload.scene.model import Chart, Floats, Ints
 
@@ -248,6 +248,19 @@ def footprint(B, k, G, c, reach, Q, grid_to_beam, plane):
 
 
 @njit(cache=True, nogil=True, error_model="numpy")
+def _cut_density(e, D, radii, shares):
+    """Share of the sun's light inside an edge at distance ``e`` inwards."""
+    total = 0.0
+    for k in range(radii.size):
+        x = e / (D * radii[k])
+        if x >= 1.0:
+            total += shares[k]
+        elif x > -1.0:
+            total += shares[k] * share_inside_line(x)
+    return total
+
+
+@njit(cache=True, nogil=True, error_model="numpy")
 def _splat(B, factor, radii, weights, ring, chart, G, E, images):
     Q, M, L, W = np.empty((3, 2)), np.empty((3, 3)), np.empty((3, 3)), np.empty(5)
     for k in range(chart.size):
@@ -282,15 +295,16 @@ def _splat(B, factor, radii, weights, ring, chart, G, E, images):
                 D = path_at(W, a, b, M[0, 0] + x * M[0, 1] + y * M[0, 2])
                 if D <= 0.0:
                     continue
-                inwards = min(
-                    L[0, 0] * a + L[0, 1] * b + L[0, 2],
-                    L[1, 0] * a + L[1, 1] * b + L[1, 2],
-                    L[2, 0] * a + L[2, 1] * b + L[2, 2],
-                )
-                if inwards <= -rho:
+                e0 = L[0, 0] * a + L[0, 1] * b + L[0, 2]
+                e1 = L[1, 0] * a + L[1, 1] * b + L[1, 2]
+                e2 = L[2, 0] * a + L[2, 1] * b + L[2, 2]
+                nearest = min(e0, e1, e2)
+                if nearest <= -rho:
                     continue
-                if inwards >= rho:  # deep inside: the whole disc is covered
+                if nearest >= rho:  # deep inside: the whole disc is covered
                     E[p] += strength / area
+                elif e0 + e1 + e2 - nearest - max(e0, e1, e2) >= rho:  # one edge cuts the disc
+                    E[p] += strength * _cut_density(nearest, D, tan_radii, shares) / area
                 else:
                     E[p] += strength * flux_density(
                         Q[0, 0] - a,
