@@ -7,7 +7,7 @@ other format by trimesh, told to leave vertices and faces as they stand in the f
 from __future__ import annotations
 
 import warnings
-from collections.abc import Iterator
+from collections.abc import Iterator, Sequence
 from dataclasses import dataclass, replace
 from pathlib import Path
 from typing import Any
@@ -76,6 +76,35 @@ def read_parts(model: Model) -> list[Part]:
         If a file is missing, empty, not readable or of an unknown format.
     """
     return [part for path in model.files for part in _read_file(Path(path), model)]
+
+
+def bounds(parts: Sequence[Part]) -> tuple[Floats, Floats]:
+    """Bounding box of the triangles that are finite.
+
+    Parameters
+    ----------
+    parts : sequence of Part
+        Parts of mesh files, at least one.
+
+    Returns
+    -------
+    low, high : (3,) float
+        Its corners. [m]
+
+    Raises
+    ------
+    MeshError
+        If no triangle is finite.
+    """
+    triangles = np.concatenate([part.triangles for part in parts])
+    points = triangles[np.isfinite(triangles).all(axis=(1, 2))].reshape(-1, 3)
+    if not len(points):
+        raise MeshError(
+            "every triangle has a corner that is not a number (nan or infinite).",
+            where=parts[0].file,
+            hint="Repair the mesh and export it again.",
+        )
+    return points.min(axis=0), points.max(axis=0)
 
 
 def _read_file(path: Path, model: Model) -> list[Part]:

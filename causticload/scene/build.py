@@ -1,0 +1,252 @@
+"""From a study to a scene: read, give roles, clean, move home, find panels, lay out receivers."""
+
+from __future__ import annotations
+
+from collections.abc import Sequence
+from dataclasses import replace
+from math import radians
+from typing import Any
+
+import numpy as np
+
+from causticload.errors import MeshError, StudyError
+from causticload.scene.charts import make_charts
+from causticload.scene.faults import check_extent, check_sheets, clean
+from causticload.scene.figure import shape_reflectors
+from causticload.scene.model import Bools, Chart, Fault, Floats, Ints, Scene, Surface
+from causticload.scene.read import Part, bounds, read_parts
+from causticload.scene.roles import Roles, assign_roles, list_names
+from causticload.scene.stack import Stack, stack_parts
+from causticload.study.model import Study
+
+SUN_RADIUS = 4.65e-3  # rad, at the mean distance of the Earth
+NEAR_M = 60.0  # up to here the default spacing holds
+DEFAULT_SPACING_M = 0.25
+SPACING_STEP_M = 0.05
+
+
+def build_scene(study: Study, *, sun_directions: Floats | None = None) -> Scene:
+    """Make the scene of a study.
+
+    Parameters
+    ----------
+    study : Study
+        The study.
+    sun_directions : (d, 3) float or None
+        Unit vectors to the sun, in the axes of the model, for which light is to be followed;
+        receivers are laid out only where it can reach. None: receivers are laid out whole.
+
+    Returns
+    -------
+    scene : Scene
+        Triangles in the order of the files, objects and faces.
+
+    Raises
+    ------
+    MeshError
+        If a mesh file cannot be read, or none of its triangles can be used.
+    StudyError
+        If nothing reflects.
+    """
+    parts = read_parts(study.model)
+    roles = assign_roles(parts, study.surfaces, study)
+    _require_reflector(roles, parts, study)
+    stack = stack_parts(roles)
+    cleaned = clean(stack.triangles, surface=stack.surface, surfaces=roles.surfaces)
+    kept = stack.take(cleaned.keep)
+    reflects = _has_role(roles.surfaces, "reflector")[kept.surface]
+    if not reflects.any():
+        raise MeshError(
+            "no triangle of any reflector can be used: all are without area or not finite.",
+            where=", ".join(path.name for path in study.model.files),
+            hint="Repair the mesh and export it again.",
+        )
+    origin = _home(kept.triangles[reflects])
+    local = replace(kept, triangles=kept.triangles - origin)
+    figure = shape_reflectors(local, reflects, roles)
+    charts, chart, spaced, spacing_said = _lay_out(local, reflects, roles.surfaces, sun_directions)
+    low, high = _extent(roles)
+    return Scene(
+        origin=origin,
+        north_rad=radians(study.site.model_north),
+        triangles=local.triangles,
+        surface=local.surface,
+        panel=figure.panel,
+        chart=chart,
+        corner_normals=figure.corner_normals,
+        curvature=figure.curvature,
+        surfaces=spaced,
+        panels=figure.panels,
+        charts=charts,
+        faults=(
+            *(note for part in parts for note in part.notes),
+            *roles.faults,
+            *check_extent(low, high, unit=study.model.unit, origin=origin),
+            *cleaned.faults,
+            *check_sheets(
+                local.triangles[reflects],
+                surface=local.surface[reflects],
+                surfaces=roles.surfaces,
+            ),
+            *figure.faults,
+            *_no_receiver(roles),
+        ),
+        assumed=(*roles.assumed, *figure.assumed, *spacing_said),
+        source_triangle=local.source,
+    )
+
+
+def _has_role(surfaces: Sequence[Surface], role: str) -> Bools:
+    return np.array([role in surface.roles for surface in surfaces], dtype=np.bool_)
+
+
+def _require_reflector(roles: Roles, parts: Sequence[Part], study: Study) -> None:
+    if _has_role(roles.surfaces, "reflector").any():
+        return
+    raise StudyError(
+        "nothing reflects: no surface has the role reflector.",
+        where=study.path.name if study.path else "",
+        hint='Give one a [[surface]] rule with role = "reflector". ' + list_names(parts),
+    )
+
+
+def _no_receiver(roles: Roles) -> tuple[Fault, ...]:
+    if _has_role(roles.surfaces, "receiver").any():
+        return ()
+    message = "No surface has the role receiver: there is nowhere to show where the light lands."
+    hint = 'Give the ground, or what else is to be judged, a rule with role = "receiver".'
+    return (Fault(kind="no_receiver", count=1, surface="", message=message, hint=hint),)
+
+
+def _home(reflectors: Floats) -> Floats:
+    """Middle of the reflectors' bounding box, to whole metres."""
+    corners = reflectors.reshape(-1, 3)
+    middle: Floats = np.round((corners.min(axis=0) + corners.max(axis=0)) / 2.0)
+    return middle + 0.0  # no minus zero
+
+
+def _extent(roles: Roles) -> tuple[Floats, Floats]:
+    """Bounding box of what the files hold, without what is ignored and a laid ground."""
+    used = zip(roles.parts, roles.surface_of_part, strict=True)
+    return bounds([part for part, number in used if part.file and number >= 0])
+
+
+# --- receivers ---------------------------------------------------------------------------------
+
+
+def _lay_out(
+    stack: Stack, reflects: Bools, surfaces: Sequence[Surface], sun_directions: Floats | None
+) -> tuple[tuple[Chart, ...], Ints, tuple[Surface, ...], list[str]]:
+    """Charts, chart of each triangle, surfaces with their spacing, and what was assumed."""
+    corners = stack.triangles[reflects].reshape(-1, 3)
+    box = corners.min(axis=0), corners.max(axis=0)
+    chart = np.full(len(stack.surface), -1, dtype=np.int32)
+    charts: list[Chart] = []
+    spaced = list(surfaces)
+    chosen: dict[float, list[str]] = {}
+    points = 0
+    for number, surface in enumerate(surfaces):
+        rows = stack.rows(number)
+        if "receiver" not in surface.roles or not len(rows):
+            continue
+        spacing = surface.spacing
+        if not spacing:
+            spacing = _spacing(stack.triangles[rows], *box)
+            chosen.setdefault(spacing, []).append(surface.name)
+            spaced[number] = replace(surface, spacing=spacing)
+        found, own = make_charts(
+            stack.triangles[rows], surface=number, spacing_m=spacing, region=None
+        )
+        chart[rows] = np.where(own >= 0, own + len(charts), -1)
+        for piece in found:
+            charts.append(replace(piece, first=points))
+            points += len(piece.areas)
+    said = [
+        f"Sample distance {spacing:g} m is chosen for {', '.join(names[:3])}"
+        + (f" and {len(names) - 3} more." if names[3:] else ".")
+        for spacing, names in chosen.items()
+    ]
+    return tuple(charts), chart, tuple(spaced), said
+
+
+def _spacing(receiver: Floats, low: Floats, high: Floats) -> float:
+    """Sample distance: the radius of the sun's image at the nearest reflector, but not finer. [m]
+
+    Distance is that of the bounding boxes, so it is never too long.
+    """
+    corners = receiver.reshape(-1, 3)
+    gap = np.maximum(0.0, np.maximum(low - corners.max(axis=0), corners.min(axis=0) - high))
+    distance = float(np.linalg.norm(gap))
+    if distance <= NEAR_M:
+        return DEFAULT_SPACING_M
+    steps = round(SUN_RADIUS * distance / SPACING_STEP_M)
+    return round(steps * SPACING_STEP_M, 2)
+
+
+# --- summary -----------------------------------------------------------------------------------
+
+
+def inspect_scene(scene: Scene) -> dict[str, Any]:
+    """Sum up a scene for people and machines.
+
+    Parameters
+    ----------
+    scene : Scene
+        The scene.
+
+    Returns
+    -------
+    summary : dict
+        Surfaces, faults, extent and counts as plain numbers, strings, lists and dicts. Lengths
+        in metres, areas in m², coordinates in the model frame.
+    """
+    edges = np.diff(scene.triangles[:, [0, 1, 2]], axis=1)
+    area = np.linalg.norm(np.cross(edges[:, 0], edges[:, 1]), axis=1) / 2.0
+    corners = scene.triangles.reshape(-1, 3)
+    counts = np.bincount(scene.surface, minlength=len(scene.surfaces))
+    areas = np.bincount(scene.surface, weights=area, minlength=len(scene.surfaces))
+    panels = np.bincount(scene.panels.surface, minlength=len(scene.surfaces))
+    points = np.zeros(len(scene.surfaces), dtype=np.int64)
+    for chart in scene.charts:
+        points[chart.surface] += len(chart.areas)
+    return {
+        "surfaces": [
+            {
+                "name": surface.name,
+                "file": surface.file,
+                "roles": sorted(surface.roles),
+                "form": surface.form if "reflector" in surface.roles else None,
+                "finish": surface.finish or None,
+                "figure": surface.figure,
+                "kind": surface.kind or None,
+                "spacing_m": surface.spacing or None,
+                "triangles": int(counts[i]),
+                "triangles_in_file": surface.triangles,
+                "area_m2": float(areas[i]),
+                "panels": int(panels[i]),
+                "points": int(points[i]),
+                "assumed": list(surface.assumed),
+            }
+            for i, surface in enumerate(scene.surfaces)
+        ],
+        "triangles": len(scene.triangles),
+        "panels": len(scene.panels),
+        "flat_panels": int(np.count_nonzero(scene.panels.flat)),
+        "charts": len(scene.charts),
+        "points": scene.point_count,
+        "origin_m": [float(x) for x in scene.origin],
+        "low_m": [float(x) for x in corners.min(axis=0) + scene.origin],
+        "high_m": [float(x) for x in corners.max(axis=0) + scene.origin],
+        "largest_curvature_per_m": float(np.abs(scene.curvature).max()),
+        "faults": [
+            {
+                "kind": fault.kind,
+                "count": fault.count,
+                "surface": fault.surface,
+                "message": fault.message,
+                "hint": fault.hint,
+            }
+            for fault in scene.faults
+        ],
+        "assumed": list(scene.assumed),
+    }
