@@ -17,12 +17,14 @@ from causticload.scene.model import Bools, Chart, Fault, Floats, Ints, Scene, Su
 from causticload.scene.read import Part, bounds, read_parts
 from causticload.scene.roles import Roles, assign_roles, list_names
 from causticload.scene.stack import Stack, stack_parts
+from causticload.scene.topology import face_normals
 from causticload.study.model import Study
 
 SUN_RADIUS = 4.65e-3  # rad, at the mean distance of the Earth
 NEAR_M = 60.0  # up to here the default spacing holds
 DEFAULT_SPACING_M = 0.25
 SPACING_STEP_M = 0.05
+MAX_POINTS = 20_000_000  # of one receiver; some gigabytes in a year's tally
 
 
 def build_scene(study: Study, *, sun_directions: Floats | None = None) -> Scene:
@@ -33,8 +35,8 @@ def build_scene(study: Study, *, sun_directions: Floats | None = None) -> Scene:
     study : Study
         The study.
     sun_directions : (d, 3) float or None
-        Unit vectors to the sun, in the axes of the model, for which light is to be followed;
-        receivers are laid out only where it can reach. None: receivers are laid out whole.
+        Unit vectors to the sun, in the axes of the model, for which light is to be followed. Not
+        made use of so far: receivers are laid out whole, also where no light can reach.
 
     Returns
     -------
@@ -46,7 +48,8 @@ def build_scene(study: Study, *, sun_directions: Floats | None = None) -> Scene:
     MeshError
         If a mesh file cannot be read, or none of its triangles can be used.
     StudyError
-        If nothing reflects.
+        If nothing reflects, or a receiver would need more points than memory can be expected to
+        hold.
     """
     parts = read_parts(study.model)
     roles = assign_roles(parts, study.surfaces, study)
@@ -154,6 +157,7 @@ def _lay_out(
             spacing = _spacing(stack.triangles[rows], *box)
             chosen.setdefault(spacing, []).append(surface.name)
             spaced[number] = replace(surface, spacing=spacing)
+        _require_countable(surface.name, stack.triangles[rows], spacing)
         found, own = make_charts(
             stack.triangles[rows], surface=number, spacing_m=spacing, region=None
         )
@@ -167,6 +171,20 @@ def _lay_out(
         for spacing, names in chosen.items()
     ]
     return tuple(charts), chart, tuple(spaced), said
+
+
+def _require_countable(name: str, receiver: Floats, spacing: float) -> None:
+    _, areas = face_normals(receiver)
+    area = float(areas.sum())
+    points = area / spacing**2
+    if points > MAX_POINTS:
+        wide_enough = float(np.ceil(20.0 * np.sqrt(area / MAX_POINTS)) / 20.0)
+        raise StudyError(
+            f"receiver {name!r} of {area:.3g} m² sampled every {spacing:g} m would have "
+            f"{points / 1e6:.0f} million points; {MAX_POINTS / 1e6:.0f} million are the limit.",
+            hint=f"Give its rule spacing = {wide_enough:g} or more, or cut the part that matters "
+            "out of it.",
+        )
 
 
 def _spacing(receiver: Floats, low: Floats, high: Floats) -> float:
@@ -200,8 +218,7 @@ def inspect_scene(scene: Scene) -> dict[str, Any]:
         Surfaces, faults, extent and counts as plain numbers, strings, lists and dicts. Lengths
         in metres, areas in m², coordinates in the model frame.
     """
-    edges = np.diff(scene.triangles[:, [0, 1, 2]], axis=1)
-    area = np.linalg.norm(np.cross(edges[:, 0], edges[:, 1]), axis=1) / 2.0
+    _, area = face_normals(scene.triangles)
     corners = scene.triangles.reshape(-1, 3)
     counts = np.bincount(scene.surface, minlength=len(scene.surfaces))
     areas = np.bincount(scene.surface, weights=area, minlength=len(scene.surfaces))

@@ -293,6 +293,15 @@ def test_sample_distance_follows_the_image_of_the_sun(
     assert any(f"{spacing:g} m is chosen for plaza" in sentence for sentence in scene.assumed)
 
 
+def test_a_receiver_with_too_many_points_is_refused_with_a_cure(tmp_path: Path) -> None:
+    # 10 km by 15 km at 0.25 m: 150e6 / 0.0625 = 2400 million points
+    rules = [RULES[0], replace(RULES[1], spacing=0.25)]
+    text = obj(("glazing", facade()[0]), ("plaza", 500.0 * plaza()))
+    with pytest.raises(StudyError, match="2400 million") as caught:
+        build(tmp_path, text, rules=rules)
+    assert "spacing = 2.75" in caught.value.hint  # sqrt(150e6 / 20e6) = 2.739
+
+
 # --- faults ------------------------------------------------------------------------------------
 
 
