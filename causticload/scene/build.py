@@ -13,6 +13,7 @@ from causticload.errors import MeshError, StudyError
 from causticload.scene.charts import make_charts
 from causticload.scene.faults import check_extent, check_sheets, clean
 from causticload.scene.figure import shape_reflectors
+from causticload.scene.reach import reach_bounds
 from causticload.scene.model import Bools, Chart, Fault, Floats, Ints, Scene, Surface
 from causticload.scene.read import Part, bounds, read_parts
 from causticload.scene.roles import Roles, assign_roles, list_names
@@ -24,6 +25,9 @@ SUN_RADIUS = 4.65e-3  # rad, at the mean distance of the Earth
 NEAR_M = 60.0  # up to here the default spacing holds
 DEFAULT_SPACING_M = 0.25
 SPACING_STEP_M = 0.05
+LARGE_POINTS = 400_000  # from here on a level receiver is cut to what light can reach
+REACH_M = 400.0  # at 400 m the image of the sun is 3.7 m wide
+LEVEL = 0.98  # cosine of the slope
 MAX_POINTS = 20_000_000  # of one receiver; some gigabytes in a year's tally
 
 
@@ -35,8 +39,8 @@ def build_scene(study: Study, *, sun_directions: Floats | None = None) -> Scene:
     study : Study
         The study.
     sun_directions : (d, 3) float or None
-        Unit vectors to the sun, in the axes of the model, for which light is to be followed. Not
-        made use of so far: receivers are laid out whole, also where no light can reach.
+        Unit vectors to the sun through the year, in the axes of the model: a large level receiver
+        is sampled only where their reflections can fall. Without them it is sampled whole.
 
     Returns
     -------
@@ -147,6 +151,7 @@ def _lay_out(
     charts: list[Chart] = []
     spaced = list(surfaces)
     chosen: dict[float, list[str]] = {}
+    said_reach: list[str] = []
     points = 0
     for number, surface in enumerate(surfaces):
         rows = stack.rows(number)
@@ -157,9 +162,18 @@ def _lay_out(
             spacing = _spacing(stack.triangles[rows], *box)
             chosen.setdefault(spacing, []).append(surface.name)
             spaced[number] = replace(surface, spacing=spacing)
-        _require_countable(surface.name, stack.triangles[rows], spacing)
+        region = None
+        if _points(stack.triangles[rows], spacing) > LARGE_POINTS and sun_directions is not None:
+            region = _reach(stack.triangles[rows], stack.triangles[reflects], sun_directions)
+        if region is None:
+            _require_countable(surface.name, stack.triangles[rows], spacing)
+        else:
+            said_reach.append(
+                f"{surface.name} is sampled only where light reflected once can fall within "
+                f"{REACH_M:g} m of path."
+            )
         found, own = make_charts(
-            stack.triangles[rows], surface=number, spacing_m=spacing, region=None
+            stack.triangles[rows], surface=number, spacing_m=spacing, region=region
         )
         chart[rows] = np.where(own >= 0, own + len(charts), -1)
         for piece in found:
@@ -169,8 +183,37 @@ def _lay_out(
         f"Sample distance {spacing:g} m is chosen for {', '.join(names[:3])}"
         + (f" and {len(names) - 3} more." if names[3:] else ".")
         for spacing, names in chosen.items()
-    ]
+    ] + said_reach
     return tuple(charts), chart, tuple(spaced), said
+
+
+def _points(receiver: Floats, spacing: float) -> float:
+    return float(face_normals(receiver)[1].sum()) / spacing**2
+
+
+def _reach(receiver: Floats, reflectors: Floats, sun_directions: Floats) -> Floats | None:
+    """Bounds of what reflected light can reach on a receiver that is level; None for others."""
+    normals, areas = face_normals(receiver)
+    if np.abs(normals[:, 2]).min() < LEVEL:
+        return None
+    # The lowest and the highest plane bound what lies between them.
+    found = [
+        reach_bounds(
+            reflectors.mean(axis=1),
+            face_normals(reflectors)[0],
+            sun_directions,
+            plane_point=np.array([0.0, 0.0, height]),
+            plane_normal=np.array([0.0, 0.0, 1.0]),
+            limit_m=REACH_M,
+        )
+        for height in (receiver[:, :, 2].min(), receiver[:, :, 2].max())
+    ]
+    bounds = [b for b in found if b is not None]
+    if not bounds:
+        return None
+    low = np.min([b[0] for b in bounds], axis=0)
+    high = np.max([b[1] for b in bounds], axis=0)
+    return np.stack([low, high])
 
 
 def _require_countable(name: str, receiver: Floats, spacing: float) -> None:
