@@ -18,7 +18,7 @@ from numpy.typing import NDArray
 from causticload.errors import InputError
 from causticload.sky.calendar import Times, time_zone
 from causticload.sky.position import geocentric_sun
-from causticload.sky.source import Sky, SunStates
+from causticload.sky.source import Sky
 from causticload.study.model import Site, YearSpec
 
 __all__ = ["DayPlan", "plan_year"]
@@ -63,8 +63,8 @@ class DayPlan:
         Length of a step of true solar time; clock time differs by less than 0.1 %. [s]
     declination_deg : (d,) float
         Declination of the sun at solar noon on each date. [degrees]
-    capped_hours : int
-        Hours of the weather file, over both dates, whose beam was cut.
+    capped : (d, n) bool
+        Steps in an hour of the weather file whose beam was cut to what a clear sky lets through.
     """
 
     index: int
@@ -80,7 +80,7 @@ class DayPlan:
     wind_ms: Floats
     step_s: float
     declination_deg: Floats
-    capped_hours: int = 0
+    capped: NDArray[np.bool_]
 
     @property
     def declination_mismatch_deg(self) -> float:
@@ -139,44 +139,53 @@ def plan_year(site: Site, year_spec: YearSpec, sky: Sky) -> tuple[DayPlan, ...]:
     begin = date(year, 1, 1).toordinal()
     middles = (np.arange(1440 // step) + 0.5) * np.radians(step / 4.0) - np.pi  # hour angles
 
+    # All days at once: the sun's position is quick in long arrays only.
+    head = np.array([rows[0] for rows in pairs])
+    mirror = np.array([rows[1] if len(rows) == 2 else -1 for rows in pairs])
+    day, angle = _near_day(site, declination[head], middles)
+    first = sky.at(_times_of(site, noons[head[day]], angle))
+    up = first.elevation_rad > 0.0
+    first, day, angle = first.chosen(up), day[up], angle[up]
+    paired = mirror[day] >= 0
+    second = sky.at(_times_of(site, noons[mirror[day[paired]]], angle[paired]))
+
     days = []
     for index, rows in enumerate(pairs):
-        steps, track = _track(site, sky, noons[rows[0]], declination[rows[0]], middles)
-        states = [track] + [sky.at(_times_of(site, noons[row], steps)) for row in rows[1:]]
+        states = [first.chosen(day == index)]
+        if len(rows) == 2:
+            states.append(second.chosen(day[paired] == index))
         days.append(
             DayPlan(
                 index=index,
                 dates=tuple(date.fromordinal(begin + row) for row in rows),
                 weights=weights[list(rows)],
-                azimuth_rad=track.azimuth_rad,
-                elevation_rad=track.elevation_rad,
+                azimuth_rad=states[0].azimuth_rad,
+                elevation_rad=states[0].elevation_rad,
                 radius_rad=np.stack([s.radius_rad for s in states]),
                 times=np.stack([s.times.astype("datetime64[s]") for s in states]),
                 beam=np.stack([s.beam for s in states]),
                 diffuse=np.stack([s.diffuse for s in states]),
                 temperature_c=np.stack([s.temperature_c for s in states]),
                 wind_ms=np.stack([s.wind_ms for s in states]),
+                capped=np.stack([s.capped for s in states]),
                 step_s=step * 60.0,
                 declination_deg=np.degrees(declination[list(rows)]),
-                capped_hours=sum(s.capped_hours for s in states),
             )
         )
     return tuple(days)
 
 
-def _track(
-    site: Site, sky: Sky, noon: np.datetime64, declination: float, middles: Floats
-) -> tuple[Floats, SunStates]:
-    """Hour angles of the steps on which the sun is up, and the sun there."""
-    # A generous choice by spherical trigonometry first; the exact sun decides.
+def _near_day(site: Site, declination: Floats, middles: Floats) -> tuple[Rows, Floats]:
+    """Steps on which the sun may be up, as number of the day and hour angle.
+
+    A generous choice by spherical trigonometry; the exact sun decides later.
+    """
     latitude = np.radians(site.latitude)
-    sine = np.sin(latitude) * np.sin(declination) + np.cos(latitude) * np.cos(declination) * np.cos(
-        middles
-    )
-    perhaps = middles[sine > -np.sin(TWILIGHT_RAD)]
-    states = sky.at(_times_of(site, noon, perhaps))
-    up = states.elevation_rad > 0.0
-    return perhaps[up], states.chosen(up)
+    sine = np.sin(latitude) * np.sin(declination)[:, None] + np.cos(latitude) * np.cos(declination)[
+        :, None
+    ] * np.cos(middles)
+    day, step = np.nonzero(sine > -np.sin(TWILIGHT_RAD))
+    return day, middles[step]
 
 
 def _solar_noons(site: Site, year: int) -> Times:
@@ -186,16 +195,15 @@ def _solar_noons(site: Site, year: int) -> Times:
     mean = 12.0 - site.longitude / 15.0
     offset = datetime(year, 1, 1, 12, tzinfo=time_zone(site.timezone)).utcoffset()
     clock = mean + (offset.total_seconds() / 3600.0 if offset is not None else 0.0)
-    noon = dates.astype("datetime64[us]") + np.timedelta64(
-        round((mean / 24.0 - clock // 24.0) * DAY_US), "us"
-    )
+    days_on = np.timedelta64(round((mean / 24.0 - clock // 24.0) * DAY_US), "us")
+    noon = np.add(dates.astype("datetime64[us]"), days_on)
     return _at_hour_angle(noon, np.zeros(len(noon)), site.longitude)
 
 
-def _times_of(site: Site, noon: np.datetime64, hour_angles: Floats) -> Times:
-    """Times, to the second, at which the sun has these hour angles on the day of a solar noon."""
+def _times_of(site: Site, noon: Times, hour_angles: Floats) -> Times:
+    """Times, to the second, at which the sun has these hour angles on the days of solar noons."""
     after_noon = np.round(hour_angles / (2.0 * np.pi) * DAY_US).astype("timedelta64[us]")
-    guess = np.asarray(noon + after_noon, dtype="datetime64[us]")
+    guess: Times = noon + after_noon
     exact = _at_hour_angle(guess, hour_angles, site.longitude)
     return (exact + np.timedelta64(500_000, "us")).astype("datetime64[s]")
 

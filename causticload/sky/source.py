@@ -2,7 +2,7 @@
 
 from __future__ import annotations
 
-from dataclasses import dataclass, field, fields, replace
+from dataclasses import dataclass, field, fields
 from typing import Any
 
 import numpy as np
@@ -46,8 +46,8 @@ class SunStates:
         Air temperature. [°C]
     wind_ms : (n,) float
         Wind speed. [m/s]
-    capped_hours : int
-        Hours of the weather file whose beam was cut to what a clear sky lets through.
+    capped : (n,) bool
+        Times in an hour of the weather file whose beam was cut to what a clear sky lets through.
     """
 
     times: Times
@@ -58,7 +58,7 @@ class SunStates:
     diffuse: Floats
     temperature_c: Floats
     wind_ms: Floats
-    capped_hours: int = 0
+    capped: NDArray[np.bool_]
 
     def chosen(self, which: NDArray[np.bool_]) -> SunStates:
         """The same at some of the times only.
@@ -71,11 +71,9 @@ class SunStates:
         Returns
         -------
         states : SunStates
-            Arrays of those; `capped_hours` still counts over all.
+            Arrays of those.
         """
-        names = [f.name for f in fields(self) if f.name != "capped_hours"]
-        arrays: dict[str, Any] = {name: getattr(self, name)[which] for name in names}
-        return replace(self, **arrays)
+        return SunStates(**{f.name: getattr(self, f.name)[which] for f in fields(self)})
 
 
 @dataclass(frozen=True, kw_only=True)
@@ -188,14 +186,14 @@ class Sky:
         """
         utc = utc_times(times)
         position = solar_position(utc, **self._place)
-        capped = 0
+        capped = np.zeros(len(utc), dtype=bool)
         if self.weather is None:
             beam, diffuse, _ = clear_beam(position, utc, turbidity=self.turbidity, **self._place)
             temperature = np.full(len(utc), DEFAULT_TEMPERATURE_C)
             wind = np.full(len(utc), DEFAULT_WIND_MS)
         else:
             from_file = self.weather.beam_at(utc, position, **self._place)
-            beam, diffuse, capped = from_file.beam, from_file.diffuse, from_file.capped_hours
+            beam, diffuse, capped = from_file.beam, from_file.diffuse, from_file.capped
             temperature, wind = self.weather.air_at(utc)
         return SunStates(
             times=utc,
@@ -206,7 +204,7 @@ class Sky:
             diffuse=diffuse,
             temperature_c=temperature,
             wind_ms=wind,
-            capped_hours=capped,
+            capped=capped,
         )
 
     def at_angles(
@@ -266,6 +264,7 @@ class Sky:
             diffuse=diffuse,
             temperature_c=np.full(n, DEFAULT_TEMPERATURE_C),
             wind_ms=np.full(n, DEFAULT_WIND_MS),
+            capped=np.zeros(n, dtype=bool),
         )
 
 

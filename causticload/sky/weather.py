@@ -48,12 +48,15 @@ class WeatherBeam:
         On a plane that faces the sun. [W/m²]
     diffuse : (n,) float
         From the sky, on the ground. [W/m²]
+    capped : (n,) bool
+        Times in an hour whose beam was cut to 1.1 times that of the clearest sky.
     capped_hours : int
-        Hours whose beam was cut to 1.1 times that of the clearest sky.
+        Number of those hours.
     """
 
     beam: Floats
     diffuse: Floats
+    capped: NDArray[np.bool_]
     capped_hours: int
 
 
@@ -185,6 +188,7 @@ class Weather:
         return WeatherBeam(
             beam=beam,
             diffuse=self.diffuse[row],
+            capped=capped[of_hour],
             capped_hours=int(capped.sum()),
         )
 
