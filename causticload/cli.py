@@ -26,9 +26,6 @@ EPILOGS = {
     "  causticload year tower.toml --out tower-year\n"
     "  causticload year tower.toml --out tower-year --resume",
     "finishes": "example:\n  causticload finishes --plot finishes.png",
-    "memo": "example:\n  causticload memo tower-year --format docx,pdf",
-    "compare": "example:\n  causticload compare tower-year tower-fritted",
-    "worker": "The protocol is described in DEVELOPERS.md, with a client of thirty lines.",
 }
 
 
@@ -75,21 +72,6 @@ def _parser() -> argparse.ArgumentParser:
 
     finishes = add("finishes", "List the built-in finishes with their sources.", study=False)
     finishes.add_argument("--plot", type=Path, metavar="PNG", help="draw reflectance over angle")
-
-    memo = add("memo", "Write the memo of a result folder.", study=False)
-    memo.add_argument("folder", metavar="DIR", type=Path, help="result folder of a year")
-    memo.add_argument("--format", default="docx,pdf,html", help="any of docx,pdf,html")
-
-    compare = add("compare", "Say what a change of design did.", study=False)
-    compare.add_argument("before", metavar="DIR_A", type=Path, help="result folder before")
-    compare.add_argument("after", metavar="DIR_B", type=Path, help="result folder after")
-    compare.add_argument("--out", type=Path, metavar="DIR", help="write difference meshes")
-
-    addon = add("install-addon", "Install the add-on into a modelling program.", study=False)
-    addon.add_argument("host", choices=["blender"], help="the program")
-    addon.add_argument("--into", type=Path, metavar="DIR", help="its user scripts folder")
-
-    add("worker", "Answer JSON-RPC 2.0 on standard input and output.", study=False)
     return parser
 
 
@@ -297,46 +279,11 @@ def _finishes(options: argparse.Namespace) -> int:
 
     rows = list_finishes()
     if options.plot:
-        from causticload.output.figures import plot_finishes
+        from causticload.output.pictures import plot_finishes
 
         plot_finishes(options.plot)
     _print(options, rows, lambda: summarise_finishes(rows))
     return DONE
-
-
-def _memo(options: argparse.Namespace) -> int:
-    from causticload.output.memo import write_memo
-
-    formats = tuple(f.strip() for f in options.format.split(",") if f.strip())
-    written = write_memo(options.folder, formats=formats)
-    _print(options, {"written": [str(p) for p in written]}, lambda: "\n".join(map(str, written)))
-    return DONE
-
-
-def _compare(options: argparse.Namespace) -> int:
-    from causticload.output.compare import compare_years, summarise_comparison
-
-    comparison = compare_years(options.before, options.after, out=options.out)
-    _print(options, comparison, lambda: summarise_comparison(comparison))
-    return DONE
-
-
-def _install_addon(options: argparse.Namespace) -> int:
-    from causticload.output.install import install_addon
-
-    places = install_addon(options.host, into=options.into)
-    _print(
-        options,
-        {"installed": [str(p) for p in places]},
-        lambda: "Installed into:\n" + "\n".join(f"  {p}" for p in places),
-    )
-    return DONE
-
-
-def _worker(options: argparse.Namespace) -> int:
-    from causticload.worker import serve
-
-    return serve()
 
 
 _COMMANDS: dict[str, Callable[[argparse.Namespace], int]] = {
@@ -344,10 +291,6 @@ _COMMANDS: dict[str, Callable[[argparse.Namespace], int]] = {
     "instant": _instant,
     "year": _year,
     "finishes": _finishes,
-    "memo": _memo,
-    "compare": _compare,
-    "install-addon": _install_addon,
-    "worker": _worker,
 }
 
 

@@ -17,6 +17,7 @@ from causticload.hazard.exceed import CriterionMap, Exceedance, merge_exceedance
 from causticload.hazard.findings import Episode
 from causticload.hazard.peaks import SunState, look_closely
 from causticload.hazard.seasons import make_seasons
+from causticload.light.bvh import Engine
 from causticload.light.count import RayCount, count_spot
 from causticload.light.field import solve_field
 from causticload.light.prepare import LitScene, prepare
@@ -55,7 +56,7 @@ class Project:
     assumed: tuple[str, ...]
 
 
-def open_project(study: Study, *, engine: str = "auto") -> Project:
+def open_project(study: Study, *, engine: Engine = "auto") -> Project:
     """Read a study's meshes and make them ready for light.
 
     Parameters
@@ -87,6 +88,9 @@ def open_project(study: Study, *, engine: str = "auto") -> Project:
         engine=engine,
     )
     said = [*scene.assumed, *sky.assumed]
+    if study.observers:
+        names = ", ".join(o.name for o in study.observers)
+        said.append(f"Observers ({names}) are read but eyes are not assessed by this version.")
     for surface, finish in zip(_reflecting(scene), finishes, strict=True):
         said += [f"{surface.name}: {text}" for text in finish.assumed]
     return Project(study, scene, lit, sky, tuple(dict.fromkeys(said)))
@@ -435,14 +439,9 @@ def solve_year(
         scene=project.scene,
         days=day_rows(project.scene, plan, days),
     )
+    seconds = clock.perf_counter() - started
     year.summary = summarise(
-        year,
-        lit,
-        criteria,
-        plan,
-        days,
-        assumed=project.assumed,
-        seconds=clock.perf_counter() - started,
+        year, lit, criteria, plan, days, assumed=project.assumed, seconds=seconds
     )
     return year
 

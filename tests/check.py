@@ -1,7 +1,7 @@
 """One command checks everything, here and in CI: format, lint, types, imports, docstrings, tests.
 
-    python tests/check.py          all of it
-    python tests/check.py --fast   without the tests marked slow
+python tests/check.py          all of it
+python tests/check.py --fast   without the tests marked slow
 """
 
 from __future__ import annotations

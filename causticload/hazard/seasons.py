@@ -95,7 +95,9 @@ def _labels(episodes: Sequence[Episode], day_stride: int) -> np.ndarray:
         a, b = np.nonzero(near)
         heads += [members[i] for i in a]
         tails += [members[i] for i in b]
-    graph = sparse.coo_matrix((np.ones(len(heads)), (heads, tails)), shape=(n, n))
+    graph = sparse.coo_matrix(
+        (np.ones(len(heads)), (np.array(heads, int), np.array(tails, int))), shape=(n, n)
+    )
     return connected_components(graph, directed=False)[1] if n else np.zeros(0, int)
 
 
@@ -112,7 +114,7 @@ def _season(group: Sequence[Episode], tz: ZoneInfo, day_stride: int) -> Season:
     by_day: dict[date, list[Episode]] = {}
     for e in group:
         by_day.setdefault(e.day, []).append(e)
-    minutes = {d: sum(e.minutes for e in each) for d, each in by_day.items()}
+    minutes = {d: _union_minutes(each) for d, each in by_day.items()}
     starts = [_clock(e.start, tz) for e in group]
     ends = [_clock(e.end, tz) for e in group]
     return Season(
@@ -129,6 +131,20 @@ def _season(group: Sequence[Episode], tz: ZoneInfo, day_stride: int) -> Season:
         worst=worst.number,
         episodes=tuple(sorted(e.number for e in group)),
     )
+
+
+def _union_minutes(episodes: Sequence[Episode]) -> float:
+    """Minutes of a day in which at least one of the episodes is on."""
+    total, reached = 0.0, -np.inf
+    for begin, end in sorted((_minutes(e.start), _minutes(e.end)) for e in episodes):
+        total += max(0.0, end - max(begin, reached))
+        reached = max(reached, end)
+    return total
+
+
+def _minutes(time: np.datetime64) -> float:
+    """Minutes since 1970."""
+    return float(time.astype("datetime64[ms]").astype(np.int64)) / 60_000.0
 
 
 def _spans(days: Sequence[tuple[date, float]], day_stride: int) -> tuple[tuple[date, date], ...]:

@@ -128,7 +128,9 @@ def follow(steps: Sequence[Sequence[HotSpot]]) -> list[list[list[HotSpot]]]:
             heads += list(now[a])
             tails += list(then[b])
     n = len(spots)
-    graph = sparse.coo_matrix((np.ones(len(heads)), (heads, tails)), shape=(n, n))
+    graph = sparse.coo_matrix(
+        (np.ones(len(heads)), (np.array(heads, int), np.array(tails, int))), shape=(n, n)
+    )
     label = connected_components(graph, directed=False)[1]
     episodes: list[list[list[HotSpot]]] = []
     for e in range(int(label.max()) + 1):

@@ -136,8 +136,12 @@ class EmbreeTracer:
         o, d = _single(origins), _single(directions)
         triangle = np.asarray(self._scene.run(o, d, query="INTERSECT"), dtype=np.int32)
         _distances(
-            self._corner, self._normal, triangle, np.ascontiguousarray(origins, dtype=float),
-            np.ascontiguousarray(directions, dtype=float), distance,
+            self._corner,
+            self._normal,
+            triangle,
+            np.ascontiguousarray(origins, dtype=float),
+            np.ascontiguousarray(directions, dtype=float),
+            distance,
         )
         return triangle, distance
 

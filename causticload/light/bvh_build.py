@@ -26,7 +26,7 @@ class Hierarchy(NamedTuple):
 
     box: NDArray[np.float32]  # (b, 2, 6) m: low and high corner of each child, rounded outwards
     child: Ints  # (b, 2) node, or first triangle of a leaf
-    count: Ints  # (b, 2) triangles of a leaf; 0 for a node
+    leaf: Ints  # (b, 2) triangles of a leaf; 0 for a node
     corner: Floats  # (m, 9) m: first corner, and the edges to the second and third
     number: Ints  # (m,) number of the triangle before it was sorted
 
@@ -57,7 +57,7 @@ def build_hierarchy(triangles: Floats) -> Hierarchy:
     return Hierarchy(
         box=box,
         child=child,
-        count=leaf,
+        leaf=leaf,
         corner=np.concatenate([T[:, 0], T[:, 1] - T[:, 0], T[:, 2] - T[:, 0]], axis=1),
         number=order,
     )
@@ -167,9 +167,7 @@ def _build(low, high, middle, order, node_low, node_high, right, count):
         n = last - first
         axis, bin_, cost = -1, 0, math.inf
         if n > 1 and depth < DEEPEST:
-            axis, bin_, cost = _best_split(
-                low, high, middle, order, first, last, mid_low, mid_high
-            )
+            axis, bin_, cost = _best_split(low, high, middle, order, first, last, mid_low, mid_high)
         whole = _half_area(node_low[node], node_high[node])
         if axis < 0 or (n <= LEAF and cost + whole >= n * whole):
             right[node], count[node] = first, n

@@ -68,7 +68,7 @@ def _inverse(d):
 @njit(cache=True, nogil=True, error_model="numpy")
 def first_hits(H, O, D, t_min, triangle, distance):
     """First triangle and distance of each ray O + t D, t > ``t_min``; -1 and inf on a miss."""
-    box, child, count, T = H.box, H.child, H.count, H.corner
+    box, child, count, T = H.box, H.child, H.leaf, H.corner
     stack, when = np.empty(64, np.int32), np.empty(64, np.float32)
     for k in range(len(O)):
         ox, oy, oz = O[k, 0], O[k, 1], O[k, 2]
@@ -112,7 +112,7 @@ def first_hits(H, O, D, t_min, triangle, distance):
 @njit(cache=True, nogil=True, error_model="numpy")
 def occlusions(H, O, D, t_min, limit, met):
     """Whether any triangle stands at t_min < t < limit along each ray."""
-    box, child, count, T = H.box, H.child, H.count, H.corner
+    box, child, count, T = H.box, H.child, H.leaf, H.corner
     stack = np.empty(64, np.int32)
     for k in range(len(O)):
         ox, oy, oz = O[k, 0], O[k, 1], O[k, 2]

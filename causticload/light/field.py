@@ -17,7 +17,7 @@ from __future__ import annotations
 
 from concurrent.futures import ThreadPoolExecutor
 from dataclasses import dataclass, field
-from typing import NamedTuple
+from typing import Any, NamedTuple
 
 import numpy as np
 
@@ -52,7 +52,7 @@ LINEAR = 0.15
 # ...or by less than this many metres, which no receiver cell or eye can tell.
 LINEAR_FLOOR_M = 0.002
 # A straddling tube with no more samples than this asks for each instead of being halved.
-SETTLE_SAMPLES = 40
+SETTLE_SAMPLES = 100
 # No tube is halved more often than this on its own account: 2^-20 of a facet is dust.
 MOST_HALVINGS = 20
 # A tube that straddles the edge of a mirror is halved this often; what is left is not followed.
@@ -203,7 +203,7 @@ class _Walk:
         receiving = ((code >= 0) | (code <= MIRROR)).any(axis=1)
         whole = agreed & (generation.sun == 1.0)
 
-        def pick(mask: Bools) -> tuple[Generation, Beams, Ints]:
+        def pick(mask: Any) -> tuple[Generation, Beams, Ints]:
             return generation.take(mask), beams.take(mask), code[mask]
 
         self._lose(*pick(~receiving))
@@ -359,9 +359,9 @@ class _Walk:
             beam=beam,
             chart=chart,
             radii=self.radii,
-            weights=self.weights,
             ring=ring,
             grids=self.lit.grids,
+            enough=SETTLE_SAMPLES,
         )
         total = np.bincount(beam, weights=count, minlength=len(ring))
         # Halving is of no use once the sun's own disc fills most of the footprint.

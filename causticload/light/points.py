@@ -200,9 +200,20 @@ def solve_points(
     found += [ask.second(b) for b in bounced or [] if len(b.sheet)]
     parts = Parts(*(np.concatenate(a) for a in zip(*found, strict=True)))
     return PointLight(
-        load=np.bincount(parts.point, weights=parts.load, minlength=len(P)),
+        load=np.bincount(parts.point, weights=parts.load, minlength=len(P)).astype(float),
         images=np.bincount(parts.point[parts.whole], minlength=len(P)).astype(np.int32),
         parts=parts,
+    )
+
+
+def _room(q: int) -> tuple[Ints, Ints, Floats, Floats, Bools]:
+    """Make arrays for ``q`` contributions: tube, point, load, weight, whole."""
+    return (
+        np.empty(q, np.int32),
+        np.empty(q, np.int32),
+        np.empty(q),
+        np.empty((q, 3)),
+        np.empty(q, bool),
     )
 
 
@@ -266,18 +277,11 @@ class _Question:
         factor = beams.solar * kept
         args = (beams, factor, self.radii, self.weights, ring, self.P, self.N)
 
-        def room(q: int) -> tuple[Ints, Ints, Floats, Floats, Bools]:
-            return (
-                np.empty(q, np.int32),
-                np.empty(q, np.int32),
-                np.empty(q),
-                np.empty((q, 3)),
-                np.empty(q, bool),
-            )
-
-        out = room(max(1, _gather(*args, *room(0))))
+        size = max(1, _gather(*args, *_room(0)))
+        tube, point, load, weight, whole = out = _room(size)
         used = _gather(*args, *out)
-        tube, point, load, weight, whole = (a[:used] for a in out)
+        tube, point, load = tube[:used], point[:used], load[:used]
+        weight, whole = weight[:used], whole[:used]
         X = reflecting_points(beams, tube, weight, lit.clearance_m)
         P = self.P[point] + lit.clearance_m * self.N[point]
         free = ~blocked_between(lit.tracer, P, X)

@@ -6,7 +6,7 @@ from dataclasses import dataclass, field
 
 import numpy as np
 
-from causticload.light.bvh import Tracer, build_tracer
+from causticload.light.bvh import Engine, Tracer, build_tracer
 from causticload.light.facets import Facets, make_facets
 from causticload.light.splat import Grids, make_grids
 from causticload.light.targets import Meanings, make_meanings
@@ -68,7 +68,7 @@ def _rings_of_sheets(
 
 
 def prepare(
-    scene: Scene, *, finishes: list[Finish], disc: SunDisc, engine: str = "auto"
+    scene: Scene, *, finishes: list[Finish], disc: SunDisc, engine: Engine = "auto"
 ) -> LitScene:
     """Make a scene ready for light.
 

@@ -14,13 +14,14 @@ import numpy as np
 from numba import njit
 
 from causticload.light.bvh import Tracer
-from causticload.light.overlap import flux_density
 from causticload.light.splat import (
     Grids,
+    edge_lines,
     footprint,
     half_width,
     path_at,
     row_interval,
+    sample_density,
     samples_per_axis,
 )
 from causticload.light.tubes import Beams
@@ -66,6 +67,7 @@ def nearest_in_triangle(Q, x, y, out):
 def _walk(B, beam, factor, radii, weights, ring, chart, G, S):
     """Write the samples in the footprints into ``S``; without room there, count them at most."""
     Q, M, w, W = np.empty((3, 2)), np.empty((3, 3)), np.empty(3), np.empty(5)
+    L = np.empty((3, 3))
     found = 0
     for pair in range(chart.size):
         k, c = beam[pair], chart[pair]
@@ -76,6 +78,7 @@ def _walk(B, beam, factor, radii, weights, ring, chart, G, S):
         n, r = G.normal[c], B.frame[k, 0]
         cos_g = -(n[0] * r[0] + n[1] * r[1] + n[2] * r[2])
         h, nu, nv = G.spacing[c], G.shape[c, 0], G.shape[c, 1]
+        area = edge_lines(Q, L)
         m = samples_per_axis(h, half_width(Q, rho))
         step = h / m
         j_first = max(0, math.ceil(low / step - 0.5))
@@ -98,17 +101,7 @@ def _walk(B, beam, factor, radii, weights, ring, chart, G, S):
                 D = path_at(W, a, b, M[0, 0] + x * M[0, 1] + y * M[0, 2])
                 if p < 0 or D <= 0.0:
                     continue
-                density = flux_density(
-                    Q[0, 0] - a,
-                    Q[0, 1] - b,
-                    Q[1, 0] - a,
-                    Q[1, 1] - b,
-                    Q[2, 0] - a,
-                    Q[2, 1] - b,
-                    D,
-                    tan_radii,
-                    shares,
-                )
+                density = sample_density(Q, L, area, a, b, D, rho, tan_radii, shares)
                 if density <= 0.0:
                     continue
                 nearest_in_triangle(Q, a, b, w)
@@ -137,9 +130,9 @@ def count_samples(
     beam: Ints,
     chart: Ints,
     radii: Floats,
-    weights: Floats,
     ring: Ints,
     grids: Grids,
+    enough: int,
 ) -> Ints:
     """Count the samples in each pair's footprint: what it would cost to settle it.
 
@@ -149,23 +142,25 @@ def count_samples(
         ``k`` beams.
     beam, chart : (p,) int
         Pairs of a beam and a chart.
-    radii, weights : (s, r) float
-        The sun's discs, as in :func:`causticload.light.splat.splat`.
+    radii : (s, r) float
+        Tangents of the radii of the sun's discs.
     ring : (k,) int
         Row of ``radii`` for each beam.
     grids : Grids
         The charts.
+    enough : int
+        Counting stops once there are more.
 
     Returns
     -------
     count : (p,) int
-        Samples in the footprint's rows.
+        Samples in the footprint's rows, by every eighth row where there are many.
     """
-    return _count(beams, beam, radii, ring, chart, grids)
+    return _count(beams, beam, radii, ring, chart, grids, enough)
 
 
 @njit(cache=True, nogil=True, error_model="numpy")
-def _count(B, beam, radii, ring, chart, G):
+def _count(B, beam, radii, ring, chart, G, enough):
     Q, M, W = np.empty((3, 2)), np.empty((3, 3)), np.empty(5)
     count = np.zeros(chart.size, np.int32)
     for pair in range(chart.size):
@@ -173,16 +168,23 @@ def _count(B, beam, radii, ring, chart, G):
         rho, low, high = footprint(B, k, G, c, radii[ring[k]][-1], Q, M, W)
         if rho < 0.0:
             continue
-        step = G.spacing[c] / samples_per_axis(G.spacing[c], half_width(Q, rho))
+        h = G.spacing[c]
+        step = h / samples_per_axis(h, half_width(Q, rho))
+        low, high = max(0.0, low), min(high, h * G.shape[c, 1])
+        if high <= low:
+            continue
         rows = int((high - low) / step) + 1
-        stride = max(1, rows // 16)  # a sixteenth of the rows tells enough
+        stride = max(1, rows // 8)  # an eighth of the rows tells enough
         for j in range(0, rows, stride):
             y = low + (j + 0.5) * step
             a, b = row_interval(
                 Q, M[1, 0] + y * M[1, 2], M[2, 0] + y * M[2, 2], M[1, 1], M[2, 1], rho
             )
+            a, b = max(0.0, a), min(b, h * G.shape[c, 0])
             if b > a:
-                count[pair] += min(1_000_000, int((b - a) / step) + 1) * stride
+                count[pair] += (int((b - a) / step) + 1) * stride
+            if count[pair] > enough:
+                break
     return count
 
 
@@ -237,7 +239,7 @@ def settle(
     args = (beams, beam, factor, radii, weights, ring, chart, grids)
     S = _room(_walk(*args, _room(0)))
     used = _walk(*args, S)
-    S = Samples(*(a[:used] for a in S))
+    S = Samples(S.pair[:used], S.point[:used], S.place[:used], S.load[:used], S.weight[:used])
     row = beam[S.pair]
     P = S.place + clearance_m * grids.normal[chart[S.pair]]
     X = reflecting_points(beams, row, S.weight, clearance_m)

@@ -261,6 +261,36 @@ def _cut_density(e, D, radii, shares):
 
 
 @njit(cache=True, nogil=True, error_model="numpy")
+def sample_density(Q, L, area, a, b, D, rho, radii, shares):
+    """Irradiance across the beam at (a, b) per watt: the plain cases first. [1/m²]
+
+    ``L`` are the lines along the edges of ``Q``, ``rho`` is at least the radius of the sun's
+    image there. One edge that cuts the disc has a closed form; corners in it need the arcs.
+    """
+    e0 = L[0, 0] * a + L[0, 1] * b + L[0, 2]
+    e1 = L[1, 0] * a + L[1, 1] * b + L[1, 2]
+    e2 = L[2, 0] * a + L[2, 1] * b + L[2, 2]
+    nearest = min(e0, e1, e2)
+    if nearest <= -rho:
+        return 0.0
+    if nearest >= rho:  # deep inside: the whole disc is covered
+        return 1.0 / area
+    if e0 + e1 + e2 - nearest - max(e0, e1, e2) >= rho:  # one edge cuts the disc
+        return _cut_density(nearest, D, radii, shares) / area
+    return flux_density(
+        Q[0, 0] - a,
+        Q[0, 1] - b,
+        Q[1, 0] - a,
+        Q[1, 1] - b,
+        Q[2, 0] - a,
+        Q[2, 1] - b,
+        D,
+        radii,
+        shares,
+    )
+
+
+@njit(cache=True, nogil=True, error_model="numpy")
 def _splat(B, factor, radii, weights, ring, chart, G, E, images):
     Q, M, L, W = np.empty((3, 2)), np.empty((3, 3)), np.empty((3, 3)), np.empty(5)
     for k in range(chart.size):
@@ -295,28 +325,8 @@ def _splat(B, factor, radii, weights, ring, chart, G, E, images):
                 D = path_at(W, a, b, M[0, 0] + x * M[0, 1] + y * M[0, 2])
                 if D <= 0.0:
                     continue
-                e0 = L[0, 0] * a + L[0, 1] * b + L[0, 2]
-                e1 = L[1, 0] * a + L[1, 1] * b + L[1, 2]
-                e2 = L[2, 0] * a + L[2, 1] * b + L[2, 2]
-                nearest = min(e0, e1, e2)
-                if nearest <= -rho:
-                    continue
-                if nearest >= rho:  # deep inside: the whole disc is covered
-                    E[p] += strength / area
-                elif e0 + e1 + e2 - nearest - max(e0, e1, e2) >= rho:  # one edge cuts the disc
-                    E[p] += strength * _cut_density(nearest, D, tan_radii, shares) / area
-                else:
-                    E[p] += strength * flux_density(
-                        Q[0, 0] - a,
-                        Q[0, 1] - b,
-                        Q[1, 0] - a,
-                        Q[1, 1] - b,
-                        Q[2, 0] - a,
-                        Q[2, 1] - b,
-                        D,
-                        tan_radii,
-                        shares,
-                    )
+                density = sample_density(Q, L, area, a, b, D, rho, tan_radii, shares)
+                E[p] += strength * density
                 if i % m == m // 2 and j % m == m // 2:
                     x += (0.5 * m - m // 2 - 0.5) * step  # from the sample to the cell's middle
                     yy = y + (0.5 * m - m // 2 - 0.5) * step

@@ -31,7 +31,7 @@ class Tubes(NamedTuple):
 
     def take(self, index: Ints | Bools) -> Tubes:
         """Return the tubes at ``index``."""
-        return Tubes(*(a[index] for a in self))
+        return Tubes(self.facet[index], self.sheet[index], self.bary[index], self.area[index])
 
 
 class Beams(NamedTuple):

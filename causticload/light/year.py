@@ -8,11 +8,11 @@ from dataclasses import dataclass
 from typing import Any
 
 import numpy as np
+from numpy.typing import NDArray
 
 from causticload.light.field import LEDGER, solve_field
 from causticload.light.prepare import LitScene
 from causticload.light.tally import Accumulator, LoadTally, Moment, StepLight
-from causticload.scene.model import Floats
 from causticload.sky.plan import DayPlan
 from causticload.sky.position import sun_direction
 
@@ -26,7 +26,9 @@ class DayResult:
 
     index: int
     kept: dict[str, dict[str, Any]]  # accumulator name -> its result
-    worst: Floats  # (dates, steps, surfaces) W/m², largest reflected load on each surface
+    worst: NDArray[
+        np.float32
+    ]  # (dates, steps, surfaces) W/m², largest reflected load on each surface
     ledger: dict[str, float]  # J in the mean over the day's dates, per kind
     steps: int
 
@@ -58,7 +60,7 @@ def run_day(
     result : DayResult or None
         None if it was given up.
     """
-    loads = LoadTally(lit.scene.point_count, day.weights)
+    loads = LoadTally(lit.scene.point_count, tuple(float(w) for w in day.weights))
     accumulators = [loads, *make_accumulators(lit, day)]
     dates, steps = day.beam.shape
     surfaces = len(lit.scene.surfaces)

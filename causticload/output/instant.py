@@ -89,7 +89,7 @@ def save_instant(instant: Instant, folder: Path) -> Path:
         {
             "reflected [W/m2]": reflected,
             "direct [W/m2]": np.concatenate([r.direct for r in ordered] or [np.zeros(0)]),
-            "images [1]": np.concatenate([r.images for r in ordered] or [np.zeros(0)]),
+            "images [1]": np.concatenate([r.images for r in ordered] or [np.zeros(0, int)]),
         },
         notes,
     )

@@ -12,8 +12,10 @@ import pyvista as pv
 from matplotlib.backends.backend_agg import FigureCanvasAgg
 from matplotlib.figure import Figure
 
+from causticload.optics.builtin import BUILT_IN
 from causticload.output import words
 from causticload.output.colours import LOAD_MAP, round_end
+from causticload.output.files import write_whole
 from causticload.output.meshes import cells_of, flag_marks, surroundings
 from causticload.output.results import Instant, ReceiverYear, Year
 from causticload.scene.model import Bools, Floats, Scene
@@ -235,8 +237,6 @@ def year_pictures(year: Year, folder: Path, *, high: float) -> list[Path]:
     paths : list of Path
         The pictures.
     """
-    from causticload.output.files import write_whole
-
     grounds = [
         r
         for r in year.receivers.values()
@@ -315,6 +315,34 @@ def _draw_scene_outline(axes: Any, scene: Scene | None) -> None:
         T = scene.triangles[mask][:, :, :2] + scene.origin[:2]
         lines = np.stack([T, np.roll(T, -1, axis=1)], axis=2).reshape(-1, 2, 2)
         axes.add_collection(LineCollection(list(lines), colors=colour, linewidths=width))
+
+
+def plot_finishes(path: Path) -> None:
+    """Draw the solar reflectance of the built-in finishes over the angle of incidence.
+
+    Parameters
+    ----------
+    path : Path
+        PNG.
+    """
+    angle = np.linspace(0.0, 90.0, 181)
+    cos = np.cos(np.radians(angle)).clip(0.0, 1.0)
+    figure = new_figure(9.0, 5.5)
+    axes = figure.subplots()
+    styles = ("-", "--", ":", "-.")
+    for k, finish in enumerate(BUILT_IN.values()):
+        solar = finish.reflectance(cos)[0].mean(axis=0)
+        shade = mpl.colormaps[LOAD_MAP](k / len(BUILT_IN))
+        axes.plot(angle, solar, styles[k % 4], color=shade, label=finish.name)
+        if finish.band is not None:
+            low, high = finish.low(cos)[0].mean(axis=0), finish.high(cos)[0].mean(axis=0)
+            axes.fill_between(angle, low, high, color=shade, alpha=0.08)
+    axes.set_xlabel("angle of incidence (degrees)")
+    axes.set_ylabel("solar reflectance, outdoor side")
+    axes.set_xlim(0.0, 90.0)
+    axes.set_ylim(0.0, 1.02)
+    figure.legend(loc="outside right upper", fontsize=8)
+    write_whole(path, lambda p: figure.savefig(p, format="png", dpi=150))
 
 
 def north_arrow(axes: Any, model_north: float) -> None:

@@ -13,8 +13,8 @@ from causticload.errors import MeshError, StudyError
 from causticload.scene.charts import make_charts
 from causticload.scene.faults import check_extent, check_sheets, clean
 from causticload.scene.figure import shape_reflectors
-from causticload.scene.reach import reach_bounds
 from causticload.scene.model import Bools, Chart, Fault, Floats, Ints, Scene, Surface
+from causticload.scene.reach import reach_bounds
 from causticload.scene.read import Part, bounds, read_parts
 from causticload.scene.roles import Roles, assign_roles, list_names
 from causticload.scene.stack import Stack, stack_parts
@@ -56,6 +56,7 @@ def build_scene(study: Study, *, sun_directions: Floats | None = None) -> Scene:
         hold.
     """
     parts = read_parts(study.model)
+    _refuse_figures(study)
     roles = assign_roles(parts, study.surfaces, study)
     _require_reflector(roles, parts, study)
     stack = stack_parts(roles)
@@ -101,6 +102,17 @@ def build_scene(study: Study, *, sun_directions: Floats | None = None) -> Scene:
         assumed=(*roles.assumed, *figure.assumed, *spacing_said),
         source_triangle=local.source,
     )
+
+
+def _refuse_figures(study: Study) -> None:
+    """Say no to what would otherwise be dropped in silence."""
+    for k, rule in enumerate(study.surfaces, start=1):
+        if rule.figure is not None:
+            raise StudyError(
+                f"figure {rule.figure!r}: surface figures are not followed by this version",
+                where=f"surface[{k}].figure",
+                hint="Take the key out: panes are then flat, or smooth by their mesh.",
+            )
 
 
 def _has_role(surfaces: Sequence[Surface], role: str) -> Bools:
@@ -193,7 +205,7 @@ def _points(receiver: Floats, spacing: float) -> float:
 
 def _reach(receiver: Floats, reflectors: Floats, sun_directions: Floats) -> Floats | None:
     """Bounds of what reflected light can reach on a receiver that is level; None for others."""
-    normals, areas = face_normals(receiver)
+    normals, _ = face_normals(receiver)
     if np.abs(normals[:, 2]).min() < LEVEL:
         return None
     # The lowest and the highest plane bound what lies between them.

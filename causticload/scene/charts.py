@@ -205,4 +205,4 @@ def _edge_cells(polygon: Any, low: Floats, h: float, shape: tuple[int, ...]) -> 
     index = np.clip(((place - low) / h).astype(int), 0, np.array(shape) - 1)
     touched = np.zeros(shape, bool)
     touched[tuple(index.T)] = True
-    return np.asarray(binary_dilation(touched, structure=np.ones((3, 3))))
+    return np.asarray(binary_dilation(touched, structure=np.ones((3, 3), bool)))

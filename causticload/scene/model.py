@@ -9,12 +9,13 @@ the origin, so that coordinates 500 km from home lose no digits. The axes stay t
 from __future__ import annotations
 
 from dataclasses import dataclass, field
+from typing import Any
 
 import numpy as np
 from numpy.typing import NDArray
 
 Floats = NDArray[np.float64]
-Ints = NDArray[np.int32]
+Ints = NDArray[np.integer[Any]]
 Bools = NDArray[np.bool_]
 
 

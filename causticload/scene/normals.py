@@ -157,8 +157,8 @@ def curvature_from_normals(triangles: Floats, corner_normals: Floats) -> Floats:
     node = weld(both, 1.0)
     weight = np.repeat(areas, 3)
     spread = np.repeat(tensor.reshape(-1, 9), 3, axis=0) * weight[:, None]
-    total = np.stack([np.bincount(node, s) for s in spread.T], axis=1)
-    total /= np.maximum(np.bincount(node, weight), 1e-300)[:, None]
+    sums: Floats = np.stack([np.bincount(node, s).astype(float) for s in spread.T], axis=1)
+    total = sums / np.maximum(np.bincount(node, weight), 1e-300)[:, None]
     return _principal(total[node].reshape(-1, 3, 3, 3), corner_normals)
 
 

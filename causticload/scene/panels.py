@@ -192,7 +192,7 @@ def _measure(
     np.maximum.at(high, panel, along.max(axis=1))
     return Panels(
         surface=surface[largest].astype(np.int32),
-        area=area,
+        area=np.asarray(area, float),
         centroid=centroid,
         normal=normal,
         flat=flat,

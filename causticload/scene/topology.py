@@ -103,7 +103,9 @@ def weld(points: Floats, tolerance: float = WELD_M) -> Indices:
     number = exact.to_numpy(np.int64)
     _, first = np.unique(number, return_index=True)
     close = cKDTree(points[first]).query_pairs(tolerance, output_type="ndarray")
-    return in_order(components(len(first), close))[number] if len(close) else number
+    if not len(close):
+        return np.asarray(number, np.int64)
+    return np.asarray(in_order(components(len(first), close))[number], np.int64)
 
 
 def components(n: int, links: NDArray[np.integer]) -> Indices:

@@ -1,8 +1,8 @@
 """Small scenes for the tests of light, built from arrays: no files, no study."""
 
 import numpy as np
-from causticload.light.bvh import build_tracer
 
+from causticload.light.bvh import build_tracer
 from causticload.light.facets import make_facets
 from causticload.light.prepare import LitScene
 from causticload.light.splat import make_grids

@@ -103,7 +103,7 @@ METALS = [
 @pytest.mark.parametrize(("n", "k", "expected"), METALS)
 def test_metals(n, k, expected):
     R = metal_reflectance(np.cos(np.radians([0, 60, 75, 85])), n=n, k=k).mean(axis=0)
-    assert R == pytest.approx(expected, abs=6e-4)
+    assert pytest.approx(expected, abs=6e-4) == R
 
 
 @settings(max_examples=60, deadline=None)
