@@ -9,7 +9,7 @@ from __future__ import annotations
 from importlib import import_module
 from typing import TYPE_CHECKING, Any
 
-__version__ = "0.1.0"
+from causticload.version import __version__
 
 if TYPE_CHECKING:
     from causticload.errors import (

@@ -12,8 +12,8 @@ from collections.abc import Callable, Sequence
 from pathlib import Path
 from typing import Any, ClassVar
 
-from causticload import __version__
 from causticload.errors import CausticloadError, InputError
+from causticload.version import __version__
 
 DONE, FAULT, WRONG_INPUT, EXCEEDED, INTERRUPTED = 0, 1, 2, 3, 130
 

@@ -66,7 +66,7 @@ class Obj:
         path.write_text("\n".join(self.lines) + "\n", encoding="ascii", newline="\n")
 
 
-TOWER = {"radius": 62.0, "half_angle": 0.42, "height": 66.0, "lean": 0.07, "shrink": 0.12}
+TOWER = {"radius": 130.0, "half_angle": 0.21, "height": 52.0, "lean": 0.04, "shrink": 0.1}
 
 
 def tower_front(phi, z):

@@ -172,13 +172,14 @@ class OwnTracer:
     name = "own bounding volume hierarchy (binned surface-area heuristic)"
 
     def __init__(self, triangles: Floats) -> None:
-        self._tree = build_hierarchy(triangles)
+        self._tree = build_hierarchy(triangles) if len(triangles) else None
 
     def first_hit(self, origins: Floats, directions: Floats) -> tuple[Ints, Floats]:
         """Return the triangle met first, -1 for none, and its distance, inf for none."""
         n = len(origins)
-        triangle, distance = np.empty(n, np.int32), np.empty(n)
-        first_hits(self._tree, *_double(origins, directions), NEAREST_M, triangle, distance)
+        triangle, distance = np.full(n, -1, np.int32), np.full(n, np.inf)
+        if self._tree is not None:
+            first_hits(self._tree, *_double(origins, directions), NEAREST_M, triangle, distance)
         return triangle, distance
 
     def occluded(
@@ -187,8 +188,9 @@ class OwnTracer:
         """Tell whether anything stands within the limit, or anywhere without one."""
         n = len(origins)
         within = np.full(n, np.inf) if limit is None else np.ascontiguousarray(limit, dtype=float)
-        met = np.empty(n, np.bool_)
-        occlusions(self._tree, *_double(origins, directions), NEAREST_M, within, met)
+        met = np.zeros(n, np.bool_)
+        if self._tree is not None:
+            occlusions(self._tree, *_double(origins, directions), NEAREST_M, within, met)
         return met
 
 

@@ -37,12 +37,12 @@ def build_hierarchy(triangles: Floats) -> Hierarchy:
     Parameters
     ----------
     triangles : (m, 3, 3) float
-        Corners, finite. [m]
+        Corners, finite, m > 0. [m]
 
     Returns
     -------
     tree : Hierarchy
-        For no triangles a single empty box, which no ray enters.
+        The tree.
     """
     m = len(triangles)
     low, high = triangles.min(axis=1), triangles.max(axis=1)
@@ -51,7 +51,7 @@ def build_hierarchy(triangles: Floats) -> Hierarchy:
     most = max(1, 2 * m)
     node_low, node_high = np.full((most, 3), np.inf), np.full((most, 3), -np.inf)
     right, count = np.zeros(most, np.int32), np.zeros(most, np.int32)
-    used = _build(low, high, middle, order, node_low, node_high, right, count) if m else 1
+    used = _build(low, high, middle, order, node_low, node_high, right, count)
     box, child, leaf = _pair(node_low[:used], node_high[:used], right[:used], count[:used])
     T = triangles[order]
     return Hierarchy(
@@ -72,13 +72,8 @@ def _pair(
     number = np.full(len(count), -1, np.int32)
     number[inner] = np.arange(len(inner))
     pair = np.stack([inner + 1, right[inner]], axis=1)
-    if not len(inner):  # one leaf, or nothing: its sibling is an empty box
-        empty = np.r_[np.full(3, np.inf), np.full(3, -np.inf)].astype(np.float32)
-        return (
-            np.stack([bounds[0], empty])[None],
-            np.array([[right[0], 0]], np.int32),
-            np.array([[count[0], 0]], np.int32),
-        )
+    if not len(inner):  # one leaf: both children are that leaf
+        pair = np.zeros((1, 2), int)
     leaf = count[pair]
     child = np.where(leaf > 0, right[pair], number[pair]).astype(np.int32)
     return np.ascontiguousarray(bounds[pair]), child, leaf.astype(np.int32)

@@ -7,7 +7,6 @@ from typing import Any
 
 import numpy as np
 
-from causticload import __version__
 from causticload.hazard.cautions import cautions_for
 from causticload.hazard.criteria import Criterion
 from causticload.hazard.exceed import CriterionMap
@@ -16,6 +15,7 @@ from causticload.light.year import DayResult
 from causticload.output.results import ReceiverYear, Year
 from causticload.scene.model import Scene
 from causticload.sky.plan import DayPlan
+from causticload.version import __version__
 
 
 def points_by_surface(lit: LitScene) -> dict[int, Any]:

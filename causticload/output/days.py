@@ -9,13 +9,13 @@ from typing import Any
 
 import numpy as np
 
-from causticload import __version__
 from causticload.errors import ResultError
 from causticload.light.year import DayResult
 from causticload.output.files import to_json, write_text, write_whole
 from causticload.output.records import to_episode, to_record
 from causticload.study import study_digest
 from causticload.study.model import Study
+from causticload.version import __version__
 
 KEY = "key.json"
 

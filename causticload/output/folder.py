@@ -77,7 +77,7 @@ def save_year(year: Year, path: Path) -> Path:
         path / "scale.png",
         lambda p: pictures.draw_scale(p, high=high, limits=limits, label="Peak reflected load"),
     )
-    pictures.year_pictures(year, path / "figures", high=high)
+    pictures.year_pictures(year, path / "figures")
     _save_chart_rows(year, path)
     _save_panels(scene, path)
     write_study(year.study, path / "study.toml")

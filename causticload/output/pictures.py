@@ -220,7 +220,7 @@ class _View:
         self.plot.close()
 
 
-def year_pictures(year: Year, folder: Path, *, high: float) -> list[Path]:
+def year_pictures(year: Year, folder: Path) -> list[Path]:
     """Draw a plan of the year's peak for each flat receiver that is lit.
 
     Parameters
@@ -229,8 +229,6 @@ def year_pictures(year: Year, folder: Path, *, high: float) -> list[Path]:
         The year.
     folder : Path
         Where to.
-    high : float
-        End of the scale. [W/m²]
 
     Returns
     -------
@@ -245,6 +243,7 @@ def year_pictures(year: Year, folder: Path, *, high: float) -> list[Path]:
     if not grounds:
         return []
     path = folder / "plan.png"
+    high = round_end(max(float(r.peak_reflected.max()) for r in grounds))
     write_whole(path, lambda p: plan_picture(grounds, p, year=year, high=high))
     return [path]
 

@@ -166,7 +166,9 @@ def tangent_frame(normal: Floats) -> tuple[Floats, Floats]:
     return u, np.cross(normal, u)
 
 
-def fit_jets(offset: Floats, used: Bools, normal: Floats, *, noise_m: float, cubic: bool = True) -> Jets:
+def fit_jets(
+    offset: Floats, used: Bools, normal: Floats, *, noise_m: float, cubic: bool = True
+) -> Jets:
     """Fit one jet at each node.
 
     Parameters
@@ -260,7 +262,7 @@ class _Fit:
     """
 
     def __init__(self, xy: Floats, z: Floats, used: Bools, axes: Floats, *, degree: int) -> None:
-        n, s = z.shape
+        n = len(z)
         count = used.sum(axis=1)
         t = np.einsum("nab,nsb->nsa", axes, np.where(used[..., None], xy, 0.0))
         size = np.sqrt(np.einsum("nsa,ns->na", t * t, used) / np.maximum(count, 1)[:, None])
@@ -321,8 +323,11 @@ def _orthogonal(a: Floats) -> tuple[Floats, Floats, Bools]:
 def _long_axes(xy: Floats, used: Bools) -> Floats:
     """Axes across and along the neighbourhood. (n, 2, 2), rows"""
     count = np.maximum(used.sum(axis=1), 1)[:, None]
-    off = np.where(used[..., None], xy - (xy * used[..., None]).sum(axis=1, keepdims=True)
-                   / count[..., None], 0.0)
+    off = np.where(
+        used[..., None],
+        xy - (xy * used[..., None]).sum(axis=1, keepdims=True) / count[..., None],
+        0.0,
+    )
     return np.linalg.eigh(np.einsum("nsa,nsb->nab", off, off))[1].swapaxes(1, 2)
 
 

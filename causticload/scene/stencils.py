@@ -11,7 +11,6 @@ from __future__ import annotations
 from dataclasses import dataclass
 
 import numpy as np
-from numpy.typing import NDArray
 from scipy.sparse import csr_array
 
 from causticload.scene.jets import Jets, batches, empty_jets, fit_jets, tangent_frame
@@ -97,10 +96,14 @@ def find_nodes(triangles: Floats, *, crease_angle_rad: float) -> Nodes:
     # faces of a fan may be wound against each other: turn them to its first face
     face = np.arange(3 * k) // 3
     turned = normals[face]
-    turned *= np.where(np.einsum("ki,ki->k", turned, normals[face[corner]][node]) < 0, -1, 1)[:, None]
+    turned *= np.where(np.einsum("ki,ki->k", turned, normals[face[corner]][node]) < 0, -1, 1)[
+        :, None
+    ]
     weighted = turned * areas[face][:, None]
-    mean = np.stack([np.bincount(node, w, minlength=n) for w in weighted.T], axis=1)
-    mean /= np.maximum(np.linalg.norm(mean, axis=1), 1e-300)[:, None]
+    sums: Floats = np.stack(
+        [np.bincount(node, w, minlength=n).astype(float) for w in weighted.T], axis=1
+    )
+    mean = sums / np.maximum(np.linalg.norm(sums, axis=1), 1e-300)[:, None]
 
     of_corner = node.reshape(-1, 3)
     i = of_corner[:, [0, 1, 2, 1, 2, 0]].ravel()
@@ -182,7 +185,10 @@ def fit_nodes(nodes: Nodes) -> Jets:
             if len(part):
                 offset, used = _gather(nodes, rows[part], stencil, part, width)
                 used = _near(offset, used, metric[rows[part]])
-                jets.put(rows[part], fit_jets(offset, used, nodes.normal[rows[part]], noise_m=nodes.noise_m))
+                jets.put(
+                    rows[part],
+                    fit_jets(offset, used, nodes.normal[rows[part]], noise_m=nodes.noise_m),
+                )
         rows = rows[~ready]
         if len(rows) == 0:
             break
@@ -264,7 +270,7 @@ def choose_sides(nodes: Nodes, jets: Jets, triangles: Floats) -> tuple[Jets, Ind
             jets.put(halves.node[mine], halves.side[side].take(mine))
         second = np.full(len(nodes.position), -1)
         second[halves.node[two]] = len(jets.residual) + np.arange(int(two.sum()))
-        jets = jets.join(halves.side[1].take(two))
+        jets = jets.join(halves.side[1].take(np.asarray(two, bool)))
         own = second[nodes.of_corner]
         face, corner = np.nonzero(own >= 0)
         first = source[face, corner]
@@ -276,9 +282,7 @@ def choose_sides(nodes: Nodes, jets: Jets, triangles: Floats) -> tuple[Jets, Ind
     return jets, source
 
 
-def _misses(
-    jets: Jets, row: Indices, triangles: Floats, face: Indices, corner: Indices
-) -> Floats:
+def _misses(jets: Jets, row: Indices, triangles: Floats, face: Indices, corner: Indices) -> Floats:
     """How far a face's other two corners lie off a fit at one corner, as a slope. (m,)"""
     here = triangles[face, corner]
     miss = np.zeros(len(face))
