@@ -51,10 +51,13 @@ from causticload.scene.model import Bools, Floats, Ints
 LINEAR = 0.15
 # ...or by less than this many metres, which no receiver cell or eye can tell.
 LINEAR_FLOOR_M = 0.002
-# A straddling tube with no more samples than this asks for each instead of being halved.
-SETTLE_SAMPLES = 100
+# A straddling tube with no more samples than this asks for each instead of being halved. Not more:
+# four rays share out what the sky and obstructions get of it, which must be little to be fair.
+SETTLE_SAMPLES = 8
 # No tube is halved more often than this on its own account: 2^-20 of a facet is dust.
 MOST_HALVINGS = 20
+# A tube of which a corner ray runs along the plane that the others meet is halved this often.
+SKIM_HALVINGS = 9
 # A tube that straddles the edge of a mirror is halved this often; what is left is not followed.
 MIRROR_HALVINGS = 7
 
@@ -306,10 +309,12 @@ class _Walk:
         error, length, depth = image_errors(beams, o=G.origin[chart], n=G.normal[chart])
         rho = (depth + beams.longest) * self.reach[ring]
         worst = error.max(axis=1)
-        fine = worst <= np.maximum(LINEAR * rho, LINEAR_FLOOR_M)
-        # A ray of the halves may pass the plane by where the rim rays did not: leave it whole.
-        fine |= (depth < 0.0) | (age >= MOST_HALVINGS)
+        fine = (worst <= np.maximum(LINEAR * rho, LINEAR_FLOOR_M)) | (age >= MOST_HALVINGS)
         edge = np.where(worst > 0.0, error.argmax(axis=1), length.argmax(axis=1))
+        # A corner ray that runs along the plane never meets it: halve until that hardly matters.
+        skims = depth < 0.0
+        fine[skims] = age[skims] >= SKIM_HALVINGS
+        edge[skims] = _longest_edge(beams.take(skims))
         return edge, fine
 
     def _splat(self, beams: Beams, factor: Floats, ring: Ints, chart: Ints) -> None:
@@ -331,7 +336,7 @@ class _Walk:
     def _straddle(self, generation: Generation, beams: Beams, code: Ints) -> Generation:
         """Settle small beams that straddle an edge; return the halves of the others."""
         ring = generation.tubes.sheet
-        small = self._is_small(beams, code, ring)
+        small = self._is_small(beams, code, ring, generation.age)
         old = generation.age >= np.where(
             (code <= MIRROR).any(axis=1), MIRROR_HALVINGS, MOST_HALVINGS
         )
@@ -351,7 +356,7 @@ class _Walk:
         rest = beams.take(~done)
         return halve_generation(generation.take(~done), _longest_edge(rest))
 
-    def _is_small(self, beams: Beams, code: Ints, ring: Ints) -> Bools:
+    def _is_small(self, beams: Beams, code: Ints, ring: Ints, age: Ints) -> Bools:
         """Whether asking for each sample costs less than halving the beam again."""
         beam, chart = distinct_charts(code)
         count = count_samples(
@@ -366,11 +371,19 @@ class _Walk:
         total = np.bincount(beam, weights=count, minlength=len(ring))
         # Halving is of no use once the sun's own disc fills most of the footprint.
         G = self.lit.grids
-        _, length, z = image_errors(beams.take(beam), o=G.origin[chart], n=G.normal[chart])
+        error, length, z = image_errors(beams.take(beam), o=G.origin[chart], n=G.normal[chart])
         blurred = length.max(axis=1) <= self.reach[ring[beam]] * (z + beams.longest[beam])
         dust = np.ones(len(ring), bool)
-        np.logical_and.at(dust, beam, blurred | (z < 0.0))
-        return (total <= SETTLE_SAMPLES) | dust
+        skims = np.zeros(len(ring), bool)
+        np.logical_or.at(skims, beam, z < 0.0)
+        np.logical_and.at(dust, beam, blurred)
+        # Which point of the tube a sample asks is found by its corners: they must tell enough.
+        rho = self.reach[ring[beam]] * (z + beams.longest[beam])
+        bent = np.zeros(len(ring), bool)
+        np.logical_or.at(bent, beam, error.max(axis=1) > np.maximum(LINEAR * rho, LINEAR_FLOOR_M))
+        true_enough = ~bent | (age >= MOST_HALVINGS)
+        few = (total <= SETTLE_SAMPLES) | dust
+        return np.where(skims, age >= SKIM_HALVINGS, few & true_enough)
 
     def _settle(
         self,
@@ -450,7 +463,9 @@ class _Walk:
             after.take(lands), code[lands, 0], ring[lands], generation.age[lands]
         )
         straddles = ~agreed & (code >= 0).any(axis=1)
-        small = self._is_small(after.take(straddles), code[straddles], ring[straddles])
+        small = self._is_small(
+            after.take(straddles), code[straddles], ring[straddles], generation.age[straddles]
+        )
         fine[straddles] = small | (generation.age[straddles] >= MOST_HALVINGS)
         edge[straddles] = _longest_edge(after.take(straddles))
 
