@@ -67,7 +67,8 @@ class Entries:
     gaps: tuple[float, ...]  # m
     index: tuple[float, float] | None
     panes: tuple[Pane, ...] | None
-    extinction_given: bool
+    extinction_given: bool  # of any pane
+    extinction_silent: bool  # of any pane
     slope_error_across: float | None  # rad
     spectral_file: Path | None
 
@@ -94,7 +95,7 @@ def read_entries(spec: FinishSpec) -> Entries:
     _known(extra, EXTRA, where)
     if "panes" in extra and "pane_count" in extra:
         raise StudyError("panes and pane_count say the same thing; give one", where=where)
-    panes, extinction_given = _panes(extra, where)
+    panes, extinctions = _panes(extra, where)
     across = extra.get("slope_error_across_mrad")
     diffuse = extra.get("diffuse_fraction")
     along = extra.get("brush_along")
@@ -118,7 +119,8 @@ def read_entries(spec: FinishSpec) -> Entries:
         gaps=_gaps(extra.get("gap_mm"), panes, f"{where}.gap_mm"),
         index=_index(extra.get("index"), f"{where}.index"),
         panes=panes,
-        extinction_given=extinction_given,
+        extinction_given="given" in extinctions,
+        extinction_silent="silent" in extinctions,
         slope_error_across=None
         if across is None
         else 1e-3 * _number(across, f"{where}.slope_error_across_mrad", 0.0, 200.0),
@@ -126,7 +128,8 @@ def read_entries(spec: FinishSpec) -> Entries:
     )
 
 
-def _panes(extra: Mapping[str, object], where: str) -> tuple[tuple[Pane, ...] | None, bool]:
+def _panes(extra: Mapping[str, object], where: str) -> tuple[tuple[Pane, ...] | None, set[str]]:
+    """Panes, and whether their extinctions are "given", "silent" or some of each."""
     count = extra.get("pane_count")
     if count is not None:
         if not isinstance(count, int) or isinstance(count, bool) or not 1 <= count <= MOST_PANES:
@@ -134,16 +137,16 @@ def _panes(extra: Mapping[str, object], where: str) -> tuple[tuple[Pane, ...] | 
                 f"must be a whole number from 1 to {MOST_PANES}, got {count!r}",
                 where=f"{where}.pane_count",
             )
-        return (Pane(),) * count, False
+        return (Pane(),) * count, {"silent"}
     if "panes" not in extra:
-        return None, False
+        return None, set()
     rows = _tables(extra["panes"], f"{where}.panes")
     if not 1 <= len(rows) <= MOST_PANES:
         raise StudyError(
             f"1 to {MOST_PANES} panes are wanted, got {len(rows)}", where=f"{where}.panes"
         )
     panes = tuple(_pane(row, f"{where}.panes[{k}]") for k, row in enumerate(rows, 1))
-    return panes, any("extinction_per_m" in row for row in rows)
+    return panes, {"given" if "extinction_per_m" in row else "silent" for row in rows}
 
 
 def _pane(row: Mapping[str, Any], where: str) -> Pane:

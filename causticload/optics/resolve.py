@@ -175,8 +175,8 @@ class _Own:
     def _panes(self, least: int) -> tuple[Pane, ...]:
         """Panes as given, else of the base, else clear ones of 6 mm."""
         if self.given.panes is not None:
-            if not self.given.extinction_given:
-                self.assume("the glass takes the extinction of clear float.")
+            if self.given.extinction_silent:
+                self.assume("glass of no stated extinction takes that of clear float.")
             return self.given.panes
         if self.base is not None and self.base.glazing is not None:
             return self.base.glazing.panes

@@ -171,6 +171,8 @@ def test_panes_with_their_own_glass():
     assert pytest.approx([0.1222, 0.4315], abs=1e-4) == R  # Fresnel table, kd = 0.12
     assert f.glazing.gaps == (0.014,)
     assert says(f, "taken as clear glass")
+    assert not says(f, "no stated extinction")
+    assert says(own({"panes": [panes[0], {"thickness_mm": 4}]}), "no stated extinction")
 
 
 def test_unit_figures_with_the_surface_of_the_coating():
