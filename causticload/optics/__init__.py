@@ -6,25 +6,35 @@ from collections.abc import Mapping
 from typing import NamedTuple
 
 import numpy as np
+from numpy.typing import ArrayLike
 
 from causticload.errors import InputError
-from causticload.optics.builtin import list_finishes
+from causticload.optics.builtin import BUILT_IN, list_finishes
+from causticload.optics.finish import Finish, Lobe
 from causticload.optics.fresnel import Floats
 from causticload.optics.resolve import resolve_finish
 from causticload.study.model import FinishSpec
 
-__all__ = ["Reflectance", "list_finishes", "reflectance", "resolve_finish"]
+__all__ = [
+    "BUILT_IN",
+    "Finish",
+    "Lobe",
+    "Reflectance",
+    "list_finishes",
+    "reflectance",
+    "resolve_finish",
+]
 
 
 class Reflectance(NamedTuple):
-    """Unpolarised reflectance over angle."""
+    """Reflectance over angle, unpolarised light."""
 
     solar: Floats  # (n,)
     visible: Floats  # (n,)
 
 
 def reflectance(
-    name: str, angles: Floats, finishes: Mapping[str, FinishSpec] | None = None
+    name: str, angles: ArrayLike, finishes: Mapping[str, FinishSpec] | None = None
 ) -> Reflectance:
     """Reflectance of a finish for unpolarised light.
 
@@ -40,7 +50,7 @@ def reflectance(
     Returns
     -------
     reflectance : Reflectance
-        Solar and visible. [1]
+        Solar and visible, all panes together. [1]
 
     Raises
     ------
@@ -52,5 +62,5 @@ def reflectance(
     a = np.atleast_1d(np.asarray(angles, dtype=float))
     if not ((a >= 0.0) & (a <= 90.0)).all():
         raise InputError(f"angles must be in [0, 90] degrees, got {angles!r}")
-    R = resolve_finish(name, finishes or {}).reflectance(np.cos(np.radians(a)).clip(0.0, 1.0))
-    return Reflectance(*R.mean(axis=1))
+    R = resolve_finish(name, finishes or {}).reflectance(np.radians(a))
+    return Reflectance(*R.sum(axis=0).mean(axis=1))
