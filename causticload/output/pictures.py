@@ -325,16 +325,17 @@ def plot_finishes(path: Path) -> None:
         PNG.
     """
     angle = np.linspace(0.0, 90.0, 181)
-    cos = np.cos(np.radians(angle)).clip(0.0, 1.0)
+    theta = np.linspace(0.0, np.pi / 2, len(angle))
     figure = new_figure(9.0, 5.5)
     axes = figure.subplots()
     styles = ("-", "--", ":", "-.")
     for k, finish in enumerate(BUILT_IN.values()):
-        solar = finish.reflectance(cos)[0].mean(axis=0)
+        unit = finish.combined()
+        solar = unit.reflectance(theta)[0, 0].mean(axis=0)
         shade = mpl.colormaps[LOAD_MAP](k / len(BUILT_IN))
         axes.plot(angle, solar, styles[k % 4], color=shade, label=finish.name)
-        if finish.band is not None:
-            low, high = finish.low(cos)[0].mean(axis=0), finish.high(cos)[0].mean(axis=0)
+        if unit.reflection.limits is not None:
+            low, high = (limit(theta)[0, 0].mean(axis=0) for limit in (unit.low, unit.high))
             axes.fill_between(angle, low, high, color=shade, alpha=0.08)
     axes.set_xlabel("angle of incidence (degrees)")
     axes.set_ylabel("solar reflectance, outdoor side")

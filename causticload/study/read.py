@@ -240,6 +240,8 @@ class _Reader:
         if index is not None and not (len(index) == 2 and all(_is_number(x) for x in index)):
             raise self.error(f"must be two numbers [n, k], got {index!r}", (*path, "index"))
         extra = {k: v for k, v in table.items() if k not in PLAIN_FINISH}
+        if "spectral_file" in extra:
+            extra["spectral_file"] = self.existing(extra["spectral_file"], (*path, "spectral_file"))
         return FinishSpec(name=name, extra=extra, **plain)
 
     def rows(self, data: Any, path: tuple[str | int, ...]) -> tuple[tuple[float, ...], ...]:
@@ -304,5 +306,6 @@ def _is_kind(value: Any, kind: str) -> bool:
         schema.LIST: isinstance(value, list),
         schema.TABLE: isinstance(value, dict),
         "text or list": isinstance(value, (str, list)),
+        "number or list": _is_number(value) or isinstance(value, list),
     }
     return tests[kind]

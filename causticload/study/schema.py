@@ -132,7 +132,15 @@ FINISH = {
     "table": Key(LIST, "rows of angle, solar[, visible]", _not_empty),
     "index": Key(LIST, "refractive index [n, k] of a metal"),
     "diffuse_fraction": Key(NUMBER, "share of reflected light that is scattered", _SHARE),
-    "pane_count": Key(WHOLE, "clear panes of a unit", between(1, 4)),
+    "pane_count": Key(WHOLE, "panes of a unit, 6 mm clear", between(1, 4)),
+    "panes": Key(LIST, "panes from outdoors: thickness_mm, extinction_per_m, index", _not_empty),
+    "coatings": Key(
+        LIST, "surface (1 = outdoors) and, if known, figures of the coated pane", _not_empty
+    ),
+    "gap_mm": Key("number or list", "between panes"),
+    "slope_error_across_mrad": Key(NUMBER, "across the lines of a brushed finish", between(0, 200)),
+    "brush_along": Key(TEXT, "direction of the lines", one_of("width", "height")),
+    "spectral_file": Key(TEXT, "layer file of the coating (CSV)", _not_empty),
     "base": Key(TEXT, "a built-in finish to start from", _not_empty),
 }
 FIGURE = {

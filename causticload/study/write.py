@@ -80,7 +80,7 @@ def _tables(study: Study, folder: Path) -> dict[str, Any]:
         tables["finish"] = {
             name: {
                 **{k: v for k, v in given(f).items() if k not in ("name", "extra")},
-                **f.extra,
+                **{k: near(v) if isinstance(v, Path) else v for k, v in f.extra.items()},
                 **({"table": [list(r) for r in f.table]} if f.table else {}),
             }
             for name, f in study.finishes.items()
@@ -92,6 +92,13 @@ def _tables(study: Study, folder: Path) -> dict[str, Any]:
     if study.criteria:
         tables["criterion"] = [given(c) for c in study.criteria]
     return tables
+
+
+def _inputs(study: Study) -> list[Path]:
+    """Every file that a study names: meshes, weather, layers of coatings."""
+    layers = [f.extra.get("spectral_file") for f in study.finishes.values()]
+    sky = [study.sky.file] if study.sky.file else []
+    return [*study.model.files, *sky, *(file for file in layers if isinstance(file, Path))]
 
 
 def input_hashes(study: Study) -> dict[str, str]:
@@ -107,7 +114,7 @@ def input_hashes(study: Study) -> dict[str, str]:
     hashes : dict of str to str
         File name to hexadecimal digest.
     """
-    files = [*study.model.files, *([study.sky.file] if study.sky.file else [])]
+    files = _inputs(study)
     if study.path is not None and study.path.is_file():
         files.insert(0, study.path)
     return {f.name: hashlib.sha256(f.read_bytes()).hexdigest() for f in files}
@@ -130,7 +137,9 @@ def study_digest(study: Study) -> str:
     record.pop("path")
     record["model"].pop("files")
     record["sky"].pop("file")
+    for finish in record["finishes"].values():
+        finish["extra"].pop("spectral_file", None)
     total = hashlib.sha256(repr(record).encode())
-    for file in [*study.model.files, *([study.sky.file] if study.sky.file else [])]:
+    for file in _inputs(study):
         total.update(hashlib.sha256(file.read_bytes()).digest())
     return total.hexdigest()
