@@ -23,7 +23,7 @@ def test_the_script_remakes_the_meshes(tmp_path):
     module.make_crescent()
     made = {p.name for p in tmp_path.iterdir()}
     assert made == {p.name for p in SAMPLES.iterdir()} - {
-        p.name for p in SAMPLES.iterdir() if p.suffix in (".toml", ".py", "")
+        p.name for p in SAMPLES.iterdir() if p.suffix in (".toml", ".py", ".png", "")
     }
     assert (tmp_path / "tower.obj").read_text() == (SAMPLES / "tower.obj").read_text()
 

@@ -42,21 +42,24 @@ class LitScene:
     point_surface: Ints  # (n,) number of the surface
     mirror_point: Bools  # (n,) the point lies on a reflector
     clearance_m: float
-    _rings: dict[float, tuple[Floats, Floats]] = field(default_factory=dict)
+    _rings: dict[tuple[float, int | None], tuple[Floats, Floats]] = field(default_factory=dict)
 
-    def rings(self, sun_radius: float) -> tuple[Floats, Floats]:
-        """Return the sun as each sheet blurs it: tangents of disc radii and shares, (k, r)."""
-        key = round(sun_radius, 9)
+    def rings(self, sun_radius: float, count: int | None = None) -> tuple[Floats, Floats]:
+        """Return the sun as each sheet blurs it: tangents of disc radii and shares, (k, r).
+
+        ``count`` discs a sheet, or as few as serve a grid.
+        """
+        key = (round(sun_radius, 9), count)
         if key not in self._rings:
-            self._rings[key] = _rings_of_sheets(self.disc, sun_radius, self.slope_error)
+            self._rings[key] = _rings_of_sheets(self.disc, sun_radius, self.slope_error, count)
         return self._rings[key]
 
 
 def _rings_of_sheets(
-    disc: SunDisc, sun_radius: float, slope_error: Floats
+    disc: SunDisc, sun_radius: float, slope_error: Floats, count: int | None
 ) -> tuple[Floats, Floats]:
     """Tangents of the radii of the sun's discs and their shares for each sheet, (k, r)."""
-    rows = [disc.rings(sun_radius, slope_error_rad=float(e)) for e in slope_error]
+    rows = [disc.rings(sun_radius, slope_error_rad=float(e), count=count) for e in slope_error]
     width = max(len(r) for r, _ in rows)
     radii, weights = np.empty((len(rows), width)), np.zeros((len(rows), width))
     for k, (r, w) in enumerate(rows):

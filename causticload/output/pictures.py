@@ -200,7 +200,7 @@ class _View:
         out = out / length if length > 1e-6 else np.array([0.0, -1.0, 0.0])
         side = np.array([-out[1], out[0], 0.0])
         focus = 0.5 * (hot + middle)
-        eye = focus + 1.15 * size * out + 0.55 * size * side + np.array([0, 0, 0.95 * size])
+        eye = focus + 1.5 * size * out + 0.7 * size * side + np.array([0, 0, 1.15 * size])
         self.plot.camera_position = [tuple(eye), tuple(focus), (0.0, 0.0, 1.0)]
         self.plot.camera.view_angle = 38.0
         self.plot.camera.clipping_range = (0.05 * size, 40.0 * size)

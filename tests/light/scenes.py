@@ -14,7 +14,7 @@ from causticload.scene.model import Chart, Panels, Scene, Surface
 class UniformDisc:
     """An evenly bright sun, written out here so that tests do not lean on the sky package."""
 
-    def rings(self, radius_rad, *, slope_error_rad=0.0):
+    def rings(self, radius_rad, *, slope_error_rad=0.0, count=None):
         assert slope_error_rad == 0.0
         return np.array([radius_rad]), np.array([1.0])
 
