@@ -6,7 +6,7 @@ import os
 import threading
 import time as clock
 from collections.abc import Sequence
-from dataclasses import dataclass, replace
+from dataclasses import asdict, dataclass, replace
 from datetime import datetime
 from typing import Any, Protocol
 
@@ -33,6 +33,7 @@ from causticload.output.results import (
 )
 from causticload.scene.build import build_scene
 from causticload.scene.model import Floats, Scene
+from causticload.scene.tessellation import check_tessellation
 from causticload.sky.calendar import parse_local
 from causticload.sky.plan import DayPlan, plan_year
 from causticload.sky.position import sun_direction
@@ -567,4 +568,5 @@ def inspect(study: Study | Project) -> dict[str, Any]:
     report = inspect_scene(project.scene)
     report["assumed"] = list(project.assumed)
     report["tracer"] = project.lit.tracer.name
+    report["tessellation"] = [asdict(c) for c in check_tessellation(project.scene)]
     return report

@@ -3,6 +3,7 @@
 from __future__ import annotations
 
 from collections.abc import Sequence
+from dataclasses import asdict
 from typing import Any
 
 import numpy as np
@@ -14,6 +15,7 @@ from causticload.light.prepare import LitScene
 from causticload.light.year import DayResult
 from causticload.output.results import ReceiverYear, Year
 from causticload.scene.model import Scene
+from causticload.scene.tessellation import check_tessellation
 from causticload.sky.plan import DayPlan
 from causticload.version import __version__
 
@@ -186,6 +188,7 @@ def summarise(
         ],
         "receivers": [_receiver_record(r) for r in year.receivers.values()],
         "ledger_kWh": ledger,
+        "tessellation": [asdict(c) for c in check_tessellation(scene)],
         "ray_counts": {
             "made": len(checks),
             "agree_within_three_standard_errors": sum(c.agrees for c in checks),

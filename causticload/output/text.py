@@ -177,9 +177,7 @@ def _how_sure(s: Mapping[str, Any]) -> list[str]:
         f"Energy ledger of the year: {ledger['intercepted']:,.0f} kWh fell on the reflectors; it "
         f"closes to {100 * abs(ledger['closure']):.2f} %."
     )
-    check = s.get("tessellation")
-    if check:
-        lines.append(f"Tessellation check: {check['sentence']}")
+    lines += [f"Tessellation of {c['surface']} {c['sentence']}" for c in s["tessellation"]]
     lines.append(f"Rays by {s['tracer']}.")
     lines += [f"{f['message']}" for f in s["scene"]["faults"]]
     return _listed("How sure", lines)
