@@ -121,9 +121,9 @@ def make_tower():
 
 
 def shell(u, v):
-    """Point of the pavilion's shell: a shallow dish 20 m by 12 m, tilted to the south."""
+    """Point of the pavilion's shell: a shallow dish 20 m by 12 m that faces south and leans back."""
     depth = u**2 / (2.0 * 26.0) + v**2 / (2.0 * 22.0)
-    tilt = np.radians(32.0)
+    tilt = np.radians(-8.0)
     forward = v * np.sin(tilt) + depth * np.cos(tilt)
     up = v * np.cos(tilt) - depth * np.sin(tilt)
     return np.stack([u, -forward, 7.2 + up], axis=-1)
@@ -156,7 +156,7 @@ def make_pavilion():
     )
 
 
-CRESCENT = {"radius": 48.0, "columns": 50, "rows": 12, "width": 1.5, "height": 2.0}
+CRESCENT = {"radius": 92.0, "columns": 50, "rows": 12, "width": 1.5, "height": 2.0}
 
 
 def make_crescent():
@@ -170,7 +170,7 @@ def make_crescent():
         middle = np.array([c["radius"] * np.sin(phi), c["radius"] * (np.cos(phi) - 1.0)])
         for j in range(c["rows"]):
             turn = phi + np.radians(rng.uniform(-0.25, 0.25))
-            tip = np.radians(3.0 + rng.uniform(-0.25, 0.25))  # leaning forward
+            tip = np.radians(rng.uniform(-0.25, 0.25))
             along = np.array([np.cos(turn), -np.sin(turn), 0.0])
             front = np.array([-np.sin(turn), -np.cos(turn), 0.0])
             up = np.array([0.0, 0.0, np.cos(tip)]) + np.sin(tip) * front
