@@ -132,30 +132,29 @@ def flux_density(ax, ay, bx, by, cx, cy, D, radii, weights):
 
         sum_k w_k covered_fraction(rho_k) / (pi rho_k²),  rho_k = D radii_k.
 
-    The two plain cases, an image within every disc and a point deep inside the image, are told
-    apart first: they are most of the work, and need no arc.
+    The plain cases of each disc, an image within it and a disc within the image or clear of it,
+    need no arc.
     """
-    rho_min, rho_max = D * radii[0], D * radii[0]
-    for k in range(1, radii.size):
-        rho_min = min(rho_min, D * radii[k])
-        rho_max = max(rho_max, D * radii[k])
-    a2, b2, c2 = ax * ax + ay * ay, bx * bx + by * by, cx * cx + cy * cy
-    all_covered = max(a2, b2, c2) <= rho_min * rho_min
-    if not all_covered:
-        edge2 = min(
-            _distance2_to_edge(ax, ay, bx, by),
-            _distance2_to_edge(bx, by, cx, cy),
-            _distance2_to_edge(cx, cy, ax, ay),
-        )
-        if edge2 >= rho_max * rho_max:
-            w1, w2, w3 = ax * by - ay * bx, bx * cy - by * cx, cx * ay - cy * ax
-            inside = (w1 > 0 and w2 > 0 and w3 > 0) or (w1 < 0 and w2 < 0 and w3 < 0)
-            return 2.0 / abs(w1 + w2 + w3) if inside else 0.0
+    farthest2 = max(ax * ax + ay * ay, bx * bx + by * by, cx * cx + cy * cy)
+    nearest2 = min(
+        _distance2_to_edge(ax, ay, bx, by),
+        _distance2_to_edge(bx, by, cx, cy),
+        _distance2_to_edge(cx, cy, ax, ay),
+    )
+    w1, w2, w3 = ax * by - ay * bx, bx * cy - by * cx, cx * ay - cy * ax
+    inside = (w1 > 0 and w2 > 0 and w3 > 0) or (w1 < 0 and w2 < 0 and w3 < 0)
+    area = 0.5 * abs(w1 + w2 + w3)
     density = 0.0
     for k in range(radii.size):
         rho = D * radii[k]
-        share = 1.0 if all_covered else covered_fraction(ax, ay, bx, by, cx, cy, rho)
-        density += weights[k] * share / (math.pi * rho * rho)
+        rho2 = rho * rho
+        if farthest2 <= rho2:
+            density += weights[k] / (math.pi * rho2)
+        elif nearest2 < rho2:
+            share = covered_fraction(ax, ay, bx, by, cx, cy, rho)
+            density += weights[k] * share / (math.pi * rho2)
+        elif inside:
+            density += weights[k] / area
     return density
 
 
