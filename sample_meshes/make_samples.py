@@ -121,7 +121,7 @@ def make_tower():
 
 
 def shell(u, v):
-    """Point of the pavilion's shell: a shallow dish 20 m by 12 m that faces south and leans back."""
+    """Point of the pavilion's shell: a dish 20 m by 12 m that faces south and leans back."""
     depth = u**2 / (2.0 * 26.0) + v**2 / (2.0 * 22.0)
     tilt = np.radians(-8.0)
     forward = v * np.sin(tilt) + depth * np.cos(tilt)
