@@ -37,7 +37,8 @@ def find_panels(
 
     On a *flat* surface the connected faces of one plane are a panel: normals within 0.5 mrad, or
     free corners within 0.1 mm of the plane (1.5 steps of the last stored digit, at most 2 mm, if
-    the coordinates are rounded more coarsely). The six faces of a thin box are six panels.
+    the coordinates are rounded more coarsely). The six faces of a thin box are six panels;
+    two sheets back to back are two panels.
 
     On a *smooth* surface a panel is a quadrilateral that was cut along its diagonal, else a single
     triangle. Two neighbours form one if they fold by less than 10 degrees into a convex
@@ -81,6 +82,7 @@ def find_panels(
     pairs = shared_edges(vertex)
     a, b = pairs.face.T
     pairs = pairs.pick((surface[a] == surface[b]) & (smooth[a] == smooth[b]))
+    pairs = pairs.pick(~(pairs.opposed & _crowded(vertex, pairs)))
     is_smooth = smooth[pairs.face[:, 0]]
 
     step = coordinate_step(triangles.reshape(-1, 3))
@@ -94,6 +96,17 @@ def find_panels(
     curved_pane = components(k, _quads(triangles, pairs.pick(is_smooth)))
     panel = in_order(np.where(smooth, k + curved_pane, flat_pane))
     return panel.astype(np.int32), _measure(triangles, surface, smooth, corner_normals, panel)
+
+
+def _crowded(vertex: Indices, pairs: EdgePairs) -> Bools:
+    """Pairs (e,) whose edge has three faces or more.
+
+    There a face wound the other way may belong to a second sheet on the back of the first.
+    """
+    face, edge = pairs.face[:, 0], pairs.edge[:, 0]
+    ends = np.sort(np.stack([vertex[face, edge], vertex[face, (edge + 1) % 3]], axis=1), axis=1)
+    _, number, count = np.unique(ends, axis=0, return_inverse=True, return_counts=True)
+    return count[number.ravel()] > 1
 
 
 def _quads(triangles: Floats, pairs: EdgePairs) -> Indices:

@@ -42,7 +42,7 @@ _DOUBT_SHARE = 0.06  # nor one that misses by less than this share of the relief
 _DOUBT_NOISE = 5.0  # nor one that misses by no more than rounded coordinates may
 _HALF_RINGS = 3  # so that a half has three rows of vertices, one more than a parabola can fake
 _HALF_SPARE = 2  # neighbours beyond the terms fitted
-_DEEP = 0.7  # and at least this share of as many beyond the line as on its other side: towards the
+_DEEP = 0.6  # and at least this share of the number or of the depth of the other half: towards the
 # end of a mesh a half has but one row or two, which any parabola fits
 _BETTER = 0.1  # a half must cut the misfit to this share
 _SURER = 0.5  # and the error to expect to this share
@@ -120,14 +120,47 @@ def _wide_meets_narrow(triangles: Floats, areas: Floats, pairs: EdgePairs) -> Bo
     Whoever made the mesh chose narrow facets where the surface bends and wide ones where it does
     not: the wide facet is flat, and a curve through both would bend it.
     """
-    facet = coplanar_groups(triangles, pairs, angle_rad=_FACET_RAD, gap_m=np.inf)
-    sides = np.sort(facet[pairs.face], axis=1)
+    facet = coplanar_groups(
+        triangles, pairs, angle_rad=_FACET_RAD, gap_m=np.inf, sliver_gap_m=_LEAST_NOISE_M
+    )
+    extent = _Extents(triangles, facet)
     edge = np.roll(triangles, -1, axis=1) - triangles
-    length = np.linalg.norm(edge[pairs.face[:, 0], pairs.edge[:, 0]], axis=1)
-    border = in_order(sides[:, 0] * (int(facet.max(initial=0)) + 1) + sides[:, 1])
-    shared = np.bincount(border, length)[border]
-    width = np.bincount(facet, areas)[sides] / shared[:, None]
-    return (sides[:, 0] != sides[:, 1]) & (width.max(axis=1) > _WIDE * width.min(axis=1))
+    width = np.empty((len(pairs), 2))
+    for side in (0, 1):
+        face, number = pairs.face[:, side], pairs.edge[:, side]
+        width[:, side] = extent.beyond(face, triangles[face, number], edge[face, number])
+    wide = facet[pairs.face[np.arange(len(pairs)), np.argmax(width, axis=1)]]
+    pane = np.bincount(facet)[wide] > 1  # in a mesh of triangles of all sizes one says nothing
+    apart = facet[pairs.face[:, 0]] != facet[pairs.face[:, 1]]
+    return apart & pane & (width.max(axis=1) > _WIDE * width.min(axis=1))
+
+
+class _Extents:
+    """How far flat facets reach, in sixteen directions of their planes."""
+
+    def __init__(self, triangles: Floats, facet: Indices) -> None:
+        self.facet = facet
+        first = np.unique(facet, return_index=True)[1]
+        self.normal = face_normals(triangles)[0]
+        u, v = tangent_frame(self.normal[first])
+        self.axes = np.stack([u, v], axis=1)  # of each facet
+        angle = 2.0 * np.pi * np.arange(16) / 16
+        self.directions = np.stack([np.cos(angle), np.sin(angle)], axis=1)
+        order = np.argsort(facet, kind="stable")
+        start = np.searchsorted(facet[order], np.arange(len(first)))
+        xy = np.einsum("kci,kai->kca", triangles, self.axes[facet])
+        # one direction at a time: all at once would hold 16 numbers for each corner
+        reach = [np.maximum.reduceat((xy @ d).max(axis=1)[order], start) for d in self.directions]
+        self.support = np.stack(reach, axis=1)
+
+    def beyond(self, face: Indices, point: Floats, edge: Floats) -> Floats:
+        """Reach of the facets of some faces inwards from their edges. (e,)"""
+        facet = self.facet[face]
+        axes = self.axes[facet]
+        inward = np.einsum("ei,eai->ea", np.cross(self.normal[face], edge), axes)
+        nearest = np.argmax(inward @ self.directions.T, axis=1)
+        here = np.einsum("ei,eai,ea->e", point, axes, self.directions[nearest])
+        return self.support[facet, nearest] - here
 
 
 def rings(link: csr_array, rows: Indices, count: int) -> csr_array:
@@ -316,7 +349,8 @@ def _best_lines(
         surer = doubt < _SURER * jets.slope_error[rows][row]
         sound = (fit.free >= _HALF_SPARE) & (fit.gain < _HALF_GAIN * jets.gain[rows][row])
         beyond = (out > _ON_LINE * out.max(axis=1, keepdims=True)).sum(axis=1)
-        sound &= beyond > _DEEP * (used[row] & ~on).sum(axis=1)
+        depth, other = out.max(axis=1), -out.min(axis=1)
+        sound &= (beyond > _DEEP * (used[row] & ~on).sum(axis=1)) | (depth > _DEEP * other)
         miss.append(np.where(surer & sound, ratio, np.inf))
     share = np.stack(miss, axis=1)
     good = share < _BETTER
