@@ -25,6 +25,8 @@ EPILOGS = {
     "year": "examples:\n"
     "  causticload year tower.toml --out tower-year\n"
     "  causticload year tower.toml --out tower-year --resume",
+    "install-addon": "example:\n  causticload install-addon blender",
+    "worker": "The protocol is described in DEVELOPERS.md, with a client.",
     "finishes": "example:\n  causticload finishes --plot finishes.png",
 }
 
@@ -72,6 +74,11 @@ def _parser() -> argparse.ArgumentParser:
 
     finishes = add("finishes", "List the built-in finishes with their sources.", study=False)
     finishes.add_argument("--plot", type=Path, metavar="PNG", help="draw reflectance over angle")
+    addon = add("install-addon", "Install the add-on into a modelling program.", study=False)
+    addon.add_argument("host", choices=["blender"], help="the program")
+    addon.add_argument("--into", type=Path, metavar="DIR", help="its user scripts folder")
+
+    add("worker", "Answer JSON-RPC 2.0 on standard input and output.", study=False)
     return parser
 
 
@@ -286,11 +293,32 @@ def _finishes(options: argparse.Namespace) -> int:
     return DONE
 
 
+def _install_addon(options: argparse.Namespace) -> int:
+    from causticload.output.install import install_addon
+
+    places = install_addon(options.host, into=options.into)
+    _print(
+        options,
+        {"installed": [str(p) for p in places]},
+        lambda: "Installed:\n" + "\n".join(f"  {p}" for p in places),
+    )
+    return DONE
+
+
+def _worker(options: argparse.Namespace) -> int:
+    from causticload.worker import serve
+
+    serve()
+    return DONE
+
+
 _COMMANDS: dict[str, Callable[[argparse.Namespace], int]] = {
     "inspect": _inspect,
     "instant": _instant,
     "year": _year,
     "finishes": _finishes,
+    "install-addon": _install_addon,
+    "worker": _worker,
 }
 
 

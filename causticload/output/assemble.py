@@ -191,7 +191,7 @@ def summarise(
         "tessellation": [asdict(c) for c in check_tessellation(scene)],
         "ray_counts": {
             "made": len(checks),
-            "agree_within_three_standard_errors": sum(c.agrees for c in checks),
+            "agree_within_three_standard_errors": sum(bool(c.agrees) for c in checks),
         },
         "assumed": list(assumed),
         "cautions": list(cautions_for({c.protects for c in criteria.criteria})),

@@ -155,6 +155,27 @@ def test_finishes(capsys, tmp_path):
     assert (tmp_path / "f.png").stat().st_size > 10_000
 
 
+def test_install_addon_copies_it(tmp_path, capsys):
+    assert main(["install-addon", "blender", "--into", str(tmp_path)]) == DONE
+    assert str(tmp_path) in capsys.readouterr().out
+    assert (tmp_path / "causticload_addon" / "__init__.py").is_file()
+
+
+def test_worker_answers_and_ends_with_its_input():
+    hello = {"jsonrpc": "2.0", "id": 1, "method": "hello", "params": {}}
+    result = subprocess.run(
+        [sys.executable, "-m", "causticload.cli", "worker"],
+        input=json.dumps(hello) + "\n",
+        capture_output=True,
+        text=True,
+        check=True,
+        timeout=60,
+    )
+    answer = json.loads(result.stdout.splitlines()[0])
+    assert answer["id"] == 1
+    assert "version" in answer["result"]
+
+
 def test_help_names_an_example():
     result = subprocess.run(
         [sys.executable, "-m", "causticload.cli", "year", "--help"],

@@ -177,6 +177,7 @@ def test_summary_names_its_inputs(saved):
     assert set(data["inputs_sha256"]) == {"wall.toml", "wall.obj"}
     assert data["cautions"]
     assert data["libraries"]["numpy"] == np.__version__
+    assert all(isinstance(v, int) for v in data["ray_counts"].values())
 
 
 def test_summaries_read_as_they_should(project, year):

@@ -1,0 +1,5 @@
+"""Runs the worker: ``python -m causticload.worker``."""
+
+from causticload.worker import serve
+
+serve()
