@@ -6,7 +6,8 @@ what its beams meet, and then every tube is one of
 - *dark*: turned away from the sun, or in shadow;
 - *gone*: all its rays meet the sky, or all meet something that is no receiver;
 - *landed*: all its rays meet one chart and three corners describe its image well enough;
-- *bounced*: all its rays meet one mirror: it goes on as a beam from there, once;
+- *bounced*: all its rays meet one mirror: it goes on as a beam from there, once, and leaves its
+  load on the mirror if that is a receiver too;
 - *settled*: its rays disagree, and it is small: its receiver samples ask one by one;
 - *halved*: anything else; the halves form the next generation, and inherit what is known.
 
@@ -120,6 +121,35 @@ class Bounced(NamedTuple):
     kept: Floats  # (k,) share of their power that stays in the mirror direction
 
 
+class _Images(NamedTuple):
+    """How beams land on charts. ``p`` pairs of a beam and a chart."""
+
+    beam: Ints  # (p,)
+    chart: Ints  # (p,)
+    error: Floats  # (p,) m, largest miss of the middle of an image's edge
+    length: Floats  # (p,) m, longest edge of the image
+    depth: Floats  # (p,) m, -1 where a corner ray does not reach the chart's plane
+    rho: Floats  # (p,) m, radius of the sun's image
+
+    def any_of(self, holds: Bools, n: int) -> Bools:
+        """Whether something holds of any chart of each of ``n`` beams."""
+        result = np.zeros(n, bool)
+        np.logical_or.at(result, self.beam, holds)
+        return result
+
+    def all_of(self, holds: Bools, n: int) -> Bools:
+        """Whether something holds of every chart of each of ``n`` beams."""
+        return ~self.any_of(~holds, n)
+
+    def bent(self, age: Ints) -> Bools:
+        """Whether three corners do not describe a beam's images, and halving may help, (n,)."""
+        off = self.error > np.maximum(LINEAR * self.rho, LINEAR_FLOOR_M)
+        skims = self.any_of(self.depth < 0.0, len(age))
+        # A corner ray that runs along a plane never meets it: halve until that hardly matters.
+        limit = np.where(skims, SKIM_HALVINGS, MOST_HALVINGS)
+        return (skims | self.any_of(off, len(age))) & (age < limit)
+
+
 LEDGER = (
     "intercepted",
     "absorbed",
@@ -198,23 +228,25 @@ class _Walk:
         generation, beams = self._light(generation)
         if not len(generation.age):
             return generation
-        code = self._targets(generation, beams)
+        code, under = self._targets(generation, beams)
         agreed = (code == code[:, :1]).all(axis=1)
+        # The halves of a tube at a mirror ask again: which chart lies under it differs.
+        passed_on = agreed & (code[:, 0] > MIRROR)
         generation = generation._replace(
-            target=np.where(agreed, code[:, 0], UNKNOWN).astype(np.int32)
+            target=np.where(passed_on, code[:, 0], UNKNOWN).astype(np.int32)
         )
         receiving = ((code >= 0) | (code <= MIRROR)).any(axis=1)
         whole = agreed & (generation.sun == 1.0)
 
-        def pick(mask: Any) -> tuple[Generation, Beams, Ints]:
-            return generation.take(mask), beams.take(mask), code[mask]
+        def pick(mask: Any, *more: Ints) -> Any:
+            return generation.take(mask), beams.take(mask), *(a[mask] for a in more)
 
-        self._lose(*pick(~receiving))
+        self._lose(*pick(~receiving, code))
         return _join(
             [
-                self._land(*pick(whole & (code[:, 0] >= 0))),
-                self._mirror(*pick(whole & (code[:, 0] <= MIRROR))),
-                self._straddle(*pick(~whole & receiving)),
+                self._land(*pick(whole & (code[:, 0] >= 0), code)),
+                self._mirror(*pick(whole & (code[:, 0] <= MIRROR), under)),
+                self._straddle(*pick(~whole & receiving, code, under)),
             ]
         )
 
@@ -239,13 +271,17 @@ class _Walk:
         keep = (outcome == LIT) & (sun > 0.0)
         return generation.take(keep), beams.take(keep)
 
-    def _targets(self, generation: Generation, beams: Beams) -> Ints:
-        """Return what each beam's rays meet, (n, 4); rays are sent where it is not known."""
+    def _targets(self, generation: Generation, beams: Beams) -> tuple[Ints, Ints]:
+        """Return what each beam's rays meet and the charts under mirrors, (n, 4) each.
+
+        Rays are sent where it is not known.
+        """
         code = np.repeat(generation.target[:, None], 4, axis=1)
+        under = np.full(code.shape, -1, np.int32)
         asks = generation.target == UNKNOWN
         if asks.any():
-            code[asks], _ = self._find(beams.take(asks), generation.tubes.sheet[asks])
-        return code
+            code[asks], under[asks] = self._find(beams.take(asks), generation.tubes.sheet[asks])
+        return code, under
 
     def _find(self, beams: Beams, ring: Ints) -> tuple[Ints, Ints]:
         lit = self.lit
@@ -333,7 +369,9 @@ class _Walk:
 
     # Beams that disagree ----------------------------------------------------------------------
 
-    def _straddle(self, generation: Generation, beams: Beams, code: Ints) -> Generation:
+    def _straddle(
+        self, generation: Generation, beams: Beams, code: Ints, under: Ints
+    ) -> Generation:
         """Settle small beams that straddle an edge; return the halves of the others."""
         ring = generation.tubes.sheet
         small = self._is_small(beams, code, ring, generation.age)
@@ -345,45 +383,49 @@ class _Walk:
         flux = self._take_in(ready, settled)
         self._split_flux(flux, code[done])
         self._add("unfollowed", flux * (code[done] <= MIRROR).mean(axis=1))
-        self._settle(
-            settled,
-            None,
-            code[done],
-            ready.sun == 1.0,
-            settled.solar * self._mirrored(ring[done]),
-            ring[done],
-        )
+        self.field.tubes += len(ready.age)
+        for charts in (code[done], under[done]):
+            self._settle(
+                settled,
+                None,
+                charts,
+                ready.sun == 1.0,
+                settled.solar * self._mirrored(ring[done]),
+                ring[done],
+            )
         rest = beams.take(~done)
         return halve_generation(generation.take(~done), _longest_edge(rest))
 
+    def _images(self, beams: Beams, charts: Ints, ring: Ints) -> _Images:
+        """How each beam lands on each of the charts given for it, (n, 4)."""
+        G = self.lit.grids
+        beam, chart = distinct_charts(charts)
+        error, length, depth = image_errors(beams.take(beam), o=G.origin[chart], n=G.normal[chart])
+        rho = self.reach[ring[beam]] * (depth + beams.longest[beam])
+        return _Images(beam, chart, error.max(axis=1), length.max(axis=1), depth, rho)
+
+    def _is_bent(self, beams: Beams, charts: Ints, ring: Ints, age: Ints) -> Bools:
+        """Whether a beam's corners do not tell well enough where it lands on its charts."""
+        return self._images(beams, charts, ring).bent(age)
+
     def _is_small(self, beams: Beams, code: Ints, ring: Ints, age: Ints) -> Bools:
         """Whether asking for each sample costs less than halving the beam again."""
-        beam, chart = distinct_charts(code)
+        images = self._images(beams, code, ring)
         count = count_samples(
             beams,
-            beam=beam,
-            chart=chart,
+            beam=images.beam,
+            chart=images.chart,
             radii=self.radii,
             ring=ring,
             grids=self.lit.grids,
             enough=SETTLE_SAMPLES,
         )
-        total = np.bincount(beam, weights=count, minlength=len(ring))
+        few = np.bincount(images.beam, weights=count, minlength=len(ring)) <= SETTLE_SAMPLES
         # Halving is of no use once the sun's own disc fills most of the footprint.
-        G = self.lit.grids
-        error, length, z = image_errors(beams.take(beam), o=G.origin[chart], n=G.normal[chart])
-        blurred = length.max(axis=1) <= self.reach[ring[beam]] * (z + beams.longest[beam])
-        dust = np.ones(len(ring), bool)
-        skims = np.zeros(len(ring), bool)
-        np.logical_or.at(skims, beam, z < 0.0)
-        np.logical_and.at(dust, beam, blurred)
+        dust = images.all_of(images.length <= images.rho, len(ring))
+        skims = images.any_of(images.depth < 0.0, len(ring))
         # Which point of the tube a sample asks is found by its corners: they must tell enough.
-        rho = self.reach[ring[beam]] * (z + beams.longest[beam])
-        bent = np.zeros(len(ring), bool)
-        np.logical_or.at(bent, beam, error.max(axis=1) > np.maximum(LINEAR * rho, LINEAR_FLOOR_M))
-        true_enough = ~bent | (age >= MOST_HALVINGS)
-        few = (total <= SETTLE_SAMPLES) | dust
-        return np.where(skims, age >= SKIM_HALVINGS, few & true_enough)
+        return (few | dust | skims) & ~images.bent(age)
 
     def _settle(
         self,
@@ -396,7 +438,6 @@ class _Walk:
     ) -> None:
         lit = self.lit
         beam, chart = distinct_charts(code)
-        self.field.tubes += len(ring)
         settle(
             beams,
             sources=sources,
@@ -416,11 +457,14 @@ class _Walk:
 
     # Beams that meet a mirror -----------------------------------------------------------------
 
-    def _mirror(self, generation: Generation, beams: Beams, code: Ints) -> Generation:
+    def _mirror(self, generation: Generation, beams: Beams, under: Ints) -> Generation:
         """Follow whole beams off the mirror they meet; return the halves of those too large."""
         lit = self.lit
+        bent = self._is_bent(beams, under, generation.tubes.sheet, generation.age)
+        halves = halve_generation(generation.take(bent), _longest_edge(beams.take(bent)))
+        generation, beams, under = generation.take(~bent), beams.take(~bent), under[~bent]
         if not len(generation.age):
-            return generation
+            return halves
         after, whole, sheet = bounce(
             beams,
             F=lit.F,
@@ -436,25 +480,37 @@ class _Walk:
         flux = self._take_in(generation.take(lost), beams.take(lost))
         self._add("unfollowed", flux)
         self._add("rereflected", flux)
+        self._settle_under(generation.take(lost), beams.take(lost), under[lost])
         again, edge = self._follow(
-            generation.take(whole), beams.take(whole), after.take(whole), sheet[whole]
+            generation.take(whole),
+            beams.take(whole),
+            after.take(whole),
+            sheet[whole],
+            under[whole],
         )
         torn &= ~lost
         return _join(
             [
+                halves,
                 halve_generation(generation.take(torn), _longest_edge(beams.take(torn))),
                 halve_generation(again, edge),
             ]
         )
 
+    def _settle_under(self, generation: Generation, beams: Beams, under: Ints) -> None:
+        """Leave the load of beams on the mirror they meet, where it is a receiver too."""
+        ring = generation.tubes.sheet
+        factor = beams.solar * self._mirrored(ring)
+        self._settle(beams, None, under, generation.sun == 1.0, factor, ring)
+
     def _follow(
-        self, generation: Generation, before: Beams, after: Beams, sheet: Ints
+        self, generation: Generation, before: Beams, after: Beams, sheet: Ints, under: Ints
     ) -> tuple[Generation, Ints]:
         """Land beams after their second reflection; return those too large and where to halve."""
         own = generation.tubes.sheet
         # The wider of the two blurs stands for both where surfaces are rough.
         ring = np.where(self.reach[sheet] > self.reach[own], sheet, own).astype(np.int32)
-        code, _ = self._find(after, ring)
+        code, under_last = self._find(after, ring)
         agreed = (code == code[:, :1]).all(axis=1)
         lands = agreed & (code[:, 0] >= 0)
         edge = np.zeros(len(sheet), np.int32)
@@ -468,6 +524,9 @@ class _Walk:
         )
         fine[straddles] = small | (generation.age[straddles] >= MOST_HALVINGS)
         edge[straddles] = _longest_edge(after.take(straddles))
+        bent = fine & self._is_bent(after, under_last, ring, generation.age)
+        fine &= ~bent
+        edge[bent] = _longest_edge(before.take(bent))
 
         first = self._take_in(generation.take(fine), before.take(fine))
         onward = self._mirrored(own) * self._mirrored(sheet)
@@ -479,15 +538,18 @@ class _Walk:
         self._add("unfollowed", factor[fine] * (code[fine] <= MIRROR).mean(axis=1))
         now = fine & lands
         self._splat(after.take(now), factor[now], ring[now], code[now, 0])
+        self._settle_under(generation.take(fine), before.take(fine), under[fine])
         now = fine & straddles
-        self._settle(
-            after.take(now),
-            before.take(now),
-            code[now],
-            np.ones(now.sum(), bool),
-            factor[now],
-            ring[now],
-        )
+        self.field.tubes += int(now.sum())
+        for rows, charts in ((now, code), (fine, under_last)):
+            self._settle(
+                after.take(rows),
+                before.take(rows),
+                charts[rows],
+                np.ones(rows.sum(), bool),
+                factor[rows],
+                ring[rows],
+            )
         self.field.bounced.append(
             Bounced(
                 after.take(fine),

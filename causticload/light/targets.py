@@ -59,9 +59,10 @@ def make_meanings(scene: Scene) -> Meanings:
 
 
 @njit(cache=True, nogil=True, error_model="numpy")
-def _codes(triangle, direction, face_normal, front, back, out):
+def _codes(triangle, direction, face_normal, front, back, chart, out, under):
     for k in range(triangle.size):
         t = triangle[k]
+        under[k] = -1
         if t < 0:
             out[k] = SKY
             continue
@@ -71,6 +72,8 @@ def _codes(triangle, direction, face_normal, front, back, out):
             + direction[k, 2] * face_normal[t, 2]
         )
         out[k] = front[t] if toward < 0.0 else back[t]
+        if toward < 0.0:
+            under[k] = chart[t]
 
 
 @njit(cache=True, nogil=True, error_model="numpy")
@@ -155,8 +158,8 @@ def find_targets(
     -------
     code : (k, 4) int
         What the three rim rays and the chief ray meet.
-    triangle : (k, 4) int
-        Numbers of the triangles met, -1 for none.
+    under : (k, 4) int
+        Chart of a mirror met that is a receiver too, -1 for none.
     """
     k = len(beams.chief)
     triangle = np.empty((k, 4), np.int32)
@@ -170,16 +173,18 @@ def find_targets(
     direction[:, :3] = rim
     hit, _ = tracer.first_hit(origin.reshape(-1, 3), rim.reshape(-1, 3))
     triangle[:, :3] = hit.reshape(k, 3)
-    code = np.empty(4 * k, np.int32)
+    code, under = np.empty(4 * k, np.int32), np.empty(4 * k, np.int32)
     _codes(
         triangle.ravel(),
         direction.reshape(-1, 3),
         F.face_normal,
         meanings.front,
         meanings.back,
+        meanings.chart,
         code,
+        under,
     )
-    return code.reshape(k, 4), triangle
+    return code.reshape(k, 4), under.reshape(k, 4)
 
 
 def count_sun(beams: Beams, *, tracer: Tracer, sun_direction: Floats, clearance_m: float) -> Ints:

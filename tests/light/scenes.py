@@ -79,11 +79,13 @@ def lit_scene(
     smooth=True,
     engine="auto",
     mirror_units=None,
+    receiver_mirrors=False,
 ):
     """A prepared scene of mirrors, one receiver and obstacles.
 
     ``mirrors`` (k, 3, 3) with corner ``normals`` (k, 3, 3), face normals if None; ``receiver`` is
-    what :func:`plane_chart` returns; ``R`` reflectance, a number or an (s, p) table (2, angles).
+    what :func:`plane_chart` returns, a mirror too with ``receiver_mirrors``;
+    ``R`` reflectance, a number or an (s, p) table (2, angles).
     """
     k = len(mirrors)
     parts, kinds = [mirrors], [np.zeros(k, int)]
@@ -102,6 +104,8 @@ def lit_scene(
     panel = np.where(kind == 0, np.arange(len(kind)), -1).astype(np.int32)
     if mirror_units is not None:  # panel number of each mirror triangle
         panel[:k] = mirror_units
+    if receiver_mirrors:
+        panel[kind == 1] = panel.max() + 1
     p = int(panel.max(initial=-1)) + 1
     first = np.array([np.flatnonzero(panel == q)[0] for q in range(p)], dtype=int)
     scene = Scene(
@@ -154,7 +158,7 @@ def lit_scene(
         point_normals=np.tile(chart.normal, (n, 1)) if charts else np.zeros((0, 3)),
         point_areas=chart.areas if charts else np.zeros(0),
         point_surface=np.ones(n, np.int32),
-        mirror_point=np.zeros(n, bool),
+        mirror_point=np.full(n, receiver_mirrors),
         clearance_m=1e-3,
     )
 

@@ -170,6 +170,47 @@ def test_mirror_turned_inside_out_reflects_the_same():
     assert b.load.sum() == pytest.approx(a.load.sum(), rel=1e-3)
 
 
+@pytest.mark.parametrize("spacing", [0.25, 0.5])
+def test_a_receiver_takes_the_same_load_when_it_mirrors_too(spacing):
+    # What falls on a wall does not depend on what the wall then does with it. The wall faces
+    # north, away from the sun, and what it sends back meets the first mirror only: unfollowed.
+    chart = plane_chart([0.0, -12.0, 6.0], [0.0, 1.0, 0.0], half=5.0, spacing=spacing)
+    cover = boxes(6, 4)
+    for azimuth, elevation in ((180, 25), (200, 12)):
+        s = sun(azimuth, elevation)
+        dull = solve(lit_scene(*wall(), receiver=chart, obstacles=cover), s)
+        bright = solve(
+            lit_scene(*wall(), receiver=chart, obstacles=cover, receiver_mirrors=True), s
+        )
+        assert dull.load.max() > 0.5
+        # edges are settled in other pieces: a few per cent of single cells, nothing of the whole
+        assert bright.load.sum() == pytest.approx(dull.load.sum(), rel=0.01)
+        hot = dull.load > 0.5 * dull.load.max()
+        assert np.median(np.abs(bright.load[hot] / dull.load[hot] - 1.0)) < 0.02
+        assert abs(balance(bright)) < 0.005
+        assert bright.ledger["receivers"] == 0.0  # the mirror enters what it takes in
+
+
+def test_a_mirror_that_receives_shows_its_load_after_a_second_reflection():
+    # A periscope whose light ends on a wall that mirrors too.
+    lower = np.array(
+        [[[-1, -1, -1], [1, -1, 1], [1, 1, 1]], [[-1, -1, -1], [1, 1, 1], [-1, 1, -1]]], float
+    )
+    upper = lower + np.array([0.0, 0.0, 10.0])
+    lit = lit_scene(
+        np.concatenate([lower, upper]),
+        receiver=plane_chart([8.0, 0.0, 10.0], [-1.0, 0.0, 0.0], half=3.0, spacing=0.1),
+        R=0.5,
+        smooth=False,
+        mirror_units=np.array([0, 0, 1, 1]),
+        receiver_mirrors=True,
+        obstacles=plane_chart([4.0, 0.0, 4.0], [-1.0, 0.0, 0.0], half=3.0, spacing=1.0)[1],
+    )
+    field = solve(lit, np.array([-1.0, 0.0, 0.0]))
+    middle = np.linalg.norm(lit.points - [8.0, 0.0, 10.0], axis=1) < 0.5
+    assert field.load[middle] == pytest.approx(0.25, rel=0.02)
+
+
 def test_focus_narrower_than_the_grid_keeps_its_light():
     # A dish whose focal spot (19 mm across at 2 m) falls between 0.25 m points.
     lit = lit_scene(
