@@ -17,7 +17,7 @@ from causticload.light.count import count_spot
 from causticload.light.field import Bounced, solve_field
 from causticload.light.points import PointLight, solve_points
 from causticload.light.prepare import LitScene
-from causticload.light.tally import GROUND_REFLECTANCE
+from causticload.light.tally import diffuse_on
 from causticload.scene.model import Bools, Chart, Floats
 
 # The field is solved again on a grid this many times finer than the sun's radius there...
@@ -251,9 +251,8 @@ def _plain_sun(spot: _Spot, sun: SunState, place: Floats) -> tuple[float, float]
     start = (place + lit.clearance_m * n)[None]
     if cos > 0.0 and lit.tracer.occluded(start, np.ascontiguousarray(sun.direction)[None])[0]:
         cos = 0.0
-    ground = GROUND_REFLECTANCE * (sun.diffuse + sun.beam * max(0.0, float(sun.direction[2])))
-    diffuse = sun.diffuse * 0.5 * (1.0 + n[2]) + ground * 0.5 * (1.0 - n[2])
-    return sun.beam * cos, float(diffuse)
+    diffuse = diffuse_on(n[2:], beam=sun.beam, diffuse=sun.diffuse, sun_up=float(sun.direction[2]))
+    return sun.beam * cos, float(diffuse[0])
 
 
 def _contributors(lit: LitScene, light: PointLight, beam: float) -> tuple[Contributor, ...]:

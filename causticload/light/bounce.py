@@ -70,7 +70,6 @@ def _bounce(F, R, sheet_of, B, triangle, distance, C, good):
             n[i] = (r[i] - d[i]) / length
         cos_theta = min(1.0, abs(d[0] * n[0] + d[1] * n[1] + d[2] * n[2]))
         _s_axis(d, n, C.s_axis[k])
-        C.cos_incidence[k] = cos_theta
         turn = (
             C.s_axis[k, 0] * B.s_axis[k, 0]
             + C.s_axis[k, 1] * B.s_axis[k, 1]

@@ -125,11 +125,12 @@ class Moment:
 
     def diffuse_at(self, index: Ints) -> Floats:
         """Return the diffuse irradiance at points under an even sky, (q,). [W/m²]"""
-        up = self.light.lit.point_normals[index, 2]
-        ground = GROUND_REFLECTANCE * (
-            self.diffuse + self.beam * max(0.0, self.light.sun_direction[2])
+        return diffuse_on(
+            self.light.lit.point_normals[index, 2],
+            beam=self.beam,
+            diffuse=self.diffuse,
+            sun_up=float(self.light.sun_direction[2]),
         )
-        return self.diffuse * 0.5 * (1.0 + up) + ground * 0.5 * (1.0 - up)
 
     def total(self, index: Ints) -> Floats:
         """Return reflected, direct and diffuse irradiance together at points, (q,). [W/m²]"""
@@ -169,6 +170,27 @@ class Moment:
 # Albedo of the ground for what it sends up to walls: the usual default (common practice).
 GROUND_REFLECTANCE = 0.2
 LEAST_REFLECTED = 50.0  # W/m²
+
+
+def diffuse_on(up: Floats, *, beam: float, diffuse: float, sun_up: float) -> Floats:
+    """Diffuse irradiance of surfaces under an even sky over a level ground.
+
+    Parameters
+    ----------
+    up : (q,) float
+        Upward component of the surfaces' unit normals. [1]
+    beam, diffuse : float
+        Direct normal and diffuse horizontal irradiance. [W/m²]
+    sun_up : float
+        Upward component of the unit vector to the sun. [1]
+
+    Returns
+    -------
+    irradiance : (q,) float
+        From the sky and from the ground. [W/m²]
+    """
+    ground = GROUND_REFLECTANCE * (diffuse + beam * max(0.0, sun_up))
+    return diffuse * 0.5 * (1.0 + up) + ground * 0.5 * (1.0 - up)
 
 
 class Accumulator(Protocol):

@@ -49,7 +49,6 @@ class Beams(NamedTuple):
     before: Floats  # (n, 3) m, path from the first reflector to each corner ray's start
     power: Floats  # (n, 4) m²
     s_axis: Floats  # (n, 3) unit
-    cos_incidence: Floats  # (n,)
 
     def take(self, index: Ints | Bools) -> Beams:
         """Return the beams at ``index``."""
@@ -88,7 +87,6 @@ def empty_beams(n: int) -> Beams:
         before=np.zeros((n, 3)),
         power=np.zeros((n, 4)),
         s_axis=np.zeros((n, 3)),
-        cos_incidence=np.zeros(n),
     )
 
 
@@ -256,7 +254,6 @@ def _light_tubes(F, R, T, s, B, outcome):
         normal_at(F, t, u, v, w, n)
         cos_theta = min(1.0, abs(n[0] * s[0] + n[1] * s[1] + n[2] * s[2]))
         _s_axis(d, n, B.s_axis[k])
-        B.cos_incidence[k] = cos_theta
         B.before[k, :] = 0.0
         crossing = T.area[k] * abs(cos_face)
         for band in range(2):

@@ -115,9 +115,7 @@ def flagged_points(year: Year) -> Bools:
 def _notes(year: Year) -> dict[str, str]:
     return {
         "title": f"{year.summary['title']}: the year {year.summary['year']['year']}",
-        "scale": "colours run evenly from 0 to the end given in scale.png; unit W/m²".replace(
-            "²", "2"
-        ),
+        "scale": "colours run evenly from 0 to the end given in scale.png; unit W/m2",
         "program": f"causticload {year.summary['program']['version']}",
         "cautions": " ".join(year.summary["cautions"]),
     }

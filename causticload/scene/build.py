@@ -10,7 +10,7 @@ from typing import Any
 import numpy as np
 
 from causticload.errors import MeshError, StudyError
-from causticload.scene.charts import make_charts
+from causticload.scene.charts import make_charts, number_charts
 from causticload.scene.faults import check_extent, check_sheets, clean
 from causticload.scene.figure import shape_reflectors
 from causticload.scene.model import Bools, Chart, Fault, Floats, Ints, Scene, Surface
@@ -164,7 +164,6 @@ def _lay_out(
     spaced = list(surfaces)
     chosen: dict[float, list[str]] = {}
     said_reach: list[str] = []
-    points = 0
     for number, surface in enumerate(surfaces):
         rows = stack.rows(number)
         if "receiver" not in surface.roles or not len(rows):
@@ -188,15 +187,13 @@ def _lay_out(
             stack.triangles[rows], surface=number, spacing_m=spacing, region=region
         )
         chart[rows] = np.where(own >= 0, own + len(charts), -1)
-        for piece in found:
-            charts.append(replace(piece, first=points))
-            points += len(piece.areas)
+        charts += found
     said = [
         f"Sample distance {spacing:g} m is chosen for {', '.join(names[:3])}"
         + (f" and {len(names) - 3} more." if names[3:] else ".")
         for spacing, names in chosen.items()
     ] + said_reach
-    return tuple(charts), chart, tuple(spaced), said
+    return number_charts(charts), chart, tuple(spaced), said
 
 
 def _points(receiver: Floats, spacing: float) -> float:

@@ -22,7 +22,6 @@ from causticload.worker.protocol import RequestError
 if TYPE_CHECKING:
     from causticload.output.results import Instant, Year
     from causticload.run import Project
-    from causticload.worker.scenes import HostObject
 
 # Hands progress on as ``note(stage, done, total)``; ends early when the event is set.
 Note = Callable[[str, int, int], None]
@@ -45,7 +44,6 @@ class Desk:
         self.folder = folder
         self._project: Project | None = None
         self._key = ""
-        self._objects: list[HostObject] = []
         self._names: dict[str, str] = {}  # surface -> object of the host
         self._laid = ""
         self._count = 0
