@@ -22,10 +22,11 @@ from typing import Any, NamedTuple
 
 import numpy as np
 
+from causticload.light.blur import Blur, make_blur
 from causticload.light.bounce import bounce
 from causticload.light.prepare import LitScene
-from causticload.light.settle import count_samples, settle
-from causticload.light.splat import splat
+from causticload.light.settle import settle
+from causticload.light.splat import sample_counts, splat
 from causticload.light.targets import (
     BLOCKED,
     MIRROR,
@@ -34,6 +35,8 @@ from causticload.light.targets import (
     count_sun,
     distinct_charts,
     find_targets,
+    meanings_of,
+    spread_targets,
 )
 from causticload.light.tubes import (
     GRAZES,
@@ -52,9 +55,10 @@ from causticload.scene.model import Bools, Floats, Ints
 LINEAR = 0.15
 # ...or by less than this many metres, which no receiver cell or eye can tell.
 LINEAR_FLOOR_M = 0.002
-# A straddling tube with no more samples than this asks for each instead of being halved. Not more:
-# four rays share out what the sky and obstructions get of it, which must be little to be fair.
-SETTLE_SAMPLES = 8
+# A straddling tube with no more samples than this asks for each instead of being halved.
+SETTLE_SAMPLES = 128
+# Rays that share out the light of a settled tube among the sky, obstructions and mirrors.
+SPREAD_RAYS = 16
 # No tube is halved more often than this on its own account: 2^-20 of a facet is dust.
 MOST_HALVINGS = 20
 # A tube of which a corner ray runs along the plane that the others meet is halved this often.
@@ -130,6 +134,7 @@ class _Images(NamedTuple):
     length: Floats  # (p,) m, longest edge of the image
     depth: Floats  # (p,) m, -1 where a corner ray does not reach the chart's plane
     rho: Floats  # (p,) m, radius of the sun's image
+    samples: Floats  # (p,) samples in the footprint
 
     def any_of(self, holds: Bools, n: int) -> Bools:
         """Whether something holds of any chart of each of ``n`` beams."""
@@ -183,11 +188,11 @@ def solve_field(
     field : Field
         Loads, images and ledger for a direct normal irradiance of 1 W/m².
     """
-    radii, weights = lit.rings(sun_radius)
+    blur = make_blur(*lit.rings(sun_radius))
     s = np.ascontiguousarray(sun_direction, dtype=np.float64)
 
     def work(share: Ints) -> Field:
-        return _Walk(lit, s, radii, weights).run(lit.base.take(share))
+        return _Walk(lit, s, blur).run(lit.base.take(share))
 
     shares = [np.arange(i, len(lit.base.facet), threads) for i in range(max(1, threads))]
     if len(shares) == 1:
@@ -206,10 +211,8 @@ def solve_field(
 class _Walk:
     """The generations of one share of the tubes."""
 
-    def __init__(self, lit: LitScene, s: Floats, radii: Floats, weights: Floats) -> None:
-        self.lit, self.s = lit, s
-        self.radii, self.weights = radii, weights
-        self.reach = np.ascontiguousarray(radii[:, -1])
+    def __init__(self, lit: LitScene, s: Floats, blur: Blur) -> None:
+        self.lit, self.s, self.blur = lit, s, blur
         n = lit.scene.point_count
         self.field = Field(np.zeros(n), np.zeros(n, np.int32), dict.fromkeys(LEDGER, 0.0))
 
@@ -291,7 +294,7 @@ class _Walk:
             F=lit.F,
             meanings=lit.meanings,
             tracer=lit.tracer,
-            reach=self.reach,
+            reach=self.blur.reach,
             ring=ring,
             clearance_m=lit.clearance_m,
         )
@@ -319,9 +322,18 @@ class _Walk:
         self._split_flux(self._take_in(generation, beams), code)
 
     def _split_flux(self, flux: Floats, code: Ints) -> None:
-        """Enter flux that meets the sky or an obstruction, by the share of rays that do."""
-        self._add("sky", flux * (code == SKY).mean(axis=1))
-        self._add("obstructions", flux * (code == BLOCKED).mean(axis=1))
+        """Enter flux that meets the sky or an obstruction, by the share of rays that do.
+
+        Rays whose code is UNKNOWN carry no light and have no say.
+        """
+        said = np.maximum(1, (code != UNKNOWN).sum(axis=1))
+        for key, holds in (("sky", code == SKY), ("obstructions", code == BLOCKED)):
+            self._add(key, flux * (holds.sum(axis=1) / said))
+
+    def _unfollowed(self, flux: Floats, code: Ints) -> None:
+        """Enter flux that meets a mirror and is not followed from there."""
+        said = np.maximum(1, (code != UNKNOWN).sum(axis=1))
+        self._add("unfollowed", flux * ((code <= MIRROR).sum(axis=1) / said))
 
     # Beams that agree -------------------------------------------------------------------------
 
@@ -343,7 +355,7 @@ class _Walk:
         """Return the edge to halve, and whether three corners describe the image well enough."""
         G = self.lit.grids
         error, length, depth = image_errors(beams, o=G.origin[chart], n=G.normal[chart])
-        rho = (depth + beams.longest) * self.reach[ring]
+        rho = (depth + beams.longest) * self.blur.reach[ring]
         worst = error.max(axis=1)
         fine = (worst <= np.maximum(LINEAR * rho, LINEAR_FLOOR_M)) | (age >= MOST_HALVINGS)
         edge = np.where(worst > 0.0, error.argmax(axis=1), length.argmax(axis=1))
@@ -358,8 +370,7 @@ class _Walk:
         splat(
             beams,
             factor=factor,
-            radii=self.radii,
-            weights=self.weights,
+            blur=self.blur,
             ring=ring,
             chart=chart,
             grids=self.lit.grids,
@@ -380,19 +391,20 @@ class _Walk:
         )
         done = (small & ~(code <= MIRROR).any(axis=1)) | old
         ready, settled = generation.take(done), beams.take(done)
+        spread, spread_under, sun = self._spread(settled, ring[done], ready.sun == 1.0)
+        ready = ready._replace(sun=sun)
         flux = self._take_in(ready, settled)
-        self._split_flux(flux, code[done])
-        self._add("unfollowed", flux * (code[done] <= MIRROR).mean(axis=1))
+        self._split_flux(flux, spread)
+        self._unfollowed(flux, spread)
         self.field.tubes += len(ready.age)
-        for charts in (code[done], under[done]):
-            self._settle(
-                settled,
-                None,
-                charts,
-                ready.sun == 1.0,
-                settled.solar * self._mirrored(ring[done]),
-                ring[done],
-            )
+        self._settle(
+            settled,
+            None,
+            np.hstack([code[done], under[done], spread, spread_under]),
+            ready.sun == 1.0,
+            settled.solar * self._mirrored(ring[done]),
+            ring[done],
+        )
         rest = beams.take(~done)
         return halve_generation(generation.take(~done), _longest_edge(rest))
 
@@ -400,9 +412,18 @@ class _Walk:
         """How each beam lands on each of the charts given for it, (n, 4)."""
         G = self.lit.grids
         beam, chart = distinct_charts(charts)
-        error, length, depth = image_errors(beams.take(beam), o=G.origin[chart], n=G.normal[chart])
-        rho = self.reach[ring[beam]] * (depth + beams.longest[beam])
-        return _Images(beam, chart, error.max(axis=1), length.max(axis=1), depth, rho)
+        rows = beams.take(beam)
+        error, length, depth = image_errors(rows, o=G.origin[chart], n=G.normal[chart])
+        rho = self.blur.reach[ring[beam]] * (depth + beams.longest[beam])
+        return _Images(
+            beam,
+            chart,
+            error.max(axis=1),
+            length.max(axis=1),
+            depth,
+            rho,
+            sample_counts(rows, edge=length, rho=rho, chart=chart, grids=G),
+        )
 
     def _is_bent(self, beams: Beams, charts: Ints, ring: Ints, age: Ints) -> Bools:
         """Whether a beam's corners do not tell well enough where it lands on its charts."""
@@ -411,16 +432,8 @@ class _Walk:
     def _is_small(self, beams: Beams, code: Ints, ring: Ints, age: Ints) -> Bools:
         """Whether asking for each sample costs less than halving the beam again."""
         images = self._images(beams, code, ring)
-        count = count_samples(
-            beams,
-            beam=images.beam,
-            chart=images.chart,
-            radii=self.radii,
-            ring=ring,
-            grids=self.lit.grids,
-            enough=SETTLE_SAMPLES,
-        )
-        few = np.bincount(images.beam, weights=count, minlength=len(ring)) <= SETTLE_SAMPLES
+        count = np.bincount(images.beam, weights=images.samples, minlength=len(ring))
+        few = count <= SETTLE_SAMPLES
         # Halving is of no use once the sun's own disc fills most of the footprint.
         dust = images.all_of(images.length <= images.rho, len(ring))
         skims = images.any_of(images.depth < 0.0, len(ring))
@@ -435,25 +448,66 @@ class _Walk:
         sun_clear: Bools,
         factor: Floats,
         ring: Ints,
+        *,
+        alone: bool = False,
     ) -> None:
+        """Settle beams on the charts that their rays meet.
+
+        What hides a sample may be a receiver that no ray has met yet, such as the edge of a thin
+        roof: it is settled too, unless the charts given are to stand ``alone``.
+        """
         lit = self.lit
         beam, chart = distinct_charts(code)
-        settle(
+        charts = len(lit.grids.spacing)
+        known = np.zeros(0, np.int64)
+        while len(beam):
+            done = settle(
+                beams,
+                sources=sources,
+                beam=beam,
+                chart=chart,
+                sun_clear=sun_clear,
+                factor=factor,
+                blur=self.blur,
+                ring=ring,
+                grids=lit.grids,
+                tracer=lit.tracer,
+                sun_direction=self.s,
+                clearance_m=lit.clearance_m,
+                load=self.field.load,
+                images=self.field.images,
+            )
+            self.field.rays += done.rays
+            if alone:
+                return
+            known = np.concatenate([known, beam.astype(np.int64) * charts + chart])
+            met, below = meanings_of(done.triangle, done.direction, F=lit.F, meanings=lit.meanings)
+            met = np.maximum(met, below)
+            pair = done.beam[met >= 0].astype(np.int64) * charts + met[met >= 0]
+            pair = np.setdiff1d(pair, known)
+            beam, chart = (pair // charts).astype(np.int32), (pair % charts).astype(np.int32)
+
+    def _spread(self, beams: Beams, ring: Ints, sun_clear: Bools) -> tuple[Ints, Ints, Floats]:
+        """Share out beams whose rays disagree by more rays than the four that said so.
+
+        Returns what each of (n, m) rays meets, UNKNOWN for one whose start does not see the sun;
+        the charts under mirrors; and the share of each beam that sees the sun, (n,).
+        """
+        lit = self.lit
+        code, under, seen = spread_targets(
             beams,
-            sources=sources,
-            beam=beam,
-            chart=chart,
-            sun_clear=sun_clear,
-            factor=factor,
-            radii=self.radii,
-            weights=self.weights,
-            ring=ring,
-            grids=lit.grids,
+            F=lit.F,
+            meanings=lit.meanings,
             tracer=lit.tracer,
-            sun_direction=self.s,
+            reach=self.blur.reach,
+            ring=ring,
             clearance_m=lit.clearance_m,
-            load=self.field.load,
+            sun_direction=None if sun_clear.all() else self.s,
+            rays=SPREAD_RAYS,
         )
+        self.field.rays += code.size * (1 if sun_clear.all() else 2)
+        seen[sun_clear] = True
+        return np.where(seen, code, UNKNOWN).astype(np.int32), under, seen.mean(axis=1)
 
     # Beams that meet a mirror -----------------------------------------------------------------
 
@@ -501,7 +555,7 @@ class _Walk:
         """Leave the load of beams on the mirror they meet, where it is a receiver too."""
         ring = generation.tubes.sheet
         factor = beams.solar * self._mirrored(ring)
-        self._settle(beams, None, under, generation.sun == 1.0, factor, ring)
+        self._settle(beams, None, under, generation.sun == 1.0, factor, ring, alone=True)
 
     def _follow(
         self, generation: Generation, before: Beams, after: Beams, sheet: Ints, under: Ints
@@ -509,7 +563,7 @@ class _Walk:
         """Land beams after their second reflection; return those too large and where to halve."""
         own = generation.tubes.sheet
         # The wider of the two blurs stands for both where surfaces are rough.
-        ring = np.where(self.reach[sheet] > self.reach[own], sheet, own).astype(np.int32)
+        ring = np.where(self.blur.reach[sheet] > self.blur.reach[own], sheet, own).astype(np.int32)
         code, under_last = self._find(after, ring)
         agreed = (code == code[:, :1]).all(axis=1)
         lands = agreed & (code[:, 0] >= 0)
@@ -534,22 +588,27 @@ class _Walk:
         self._add("rereflected", first)
         self._add("absorbed", first - (after.solar * self._mirrored(own))[fine])
         self._add("scattered", (after.solar * self._mirrored(own) - factor)[fine])
-        self._split_flux(factor[fine], code[fine])
-        self._add("unfollowed", factor[fine] * (code[fine] <= MIRROR).mean(axis=1))
+        whole = fine & ~straddles
+        self._split_flux(factor[whole], code[whole])
+        self._unfollowed(factor[whole], code[whole])
         now = fine & lands
         self._splat(after.take(now), factor[now], ring[now], code[now, 0])
         self._settle_under(generation.take(fine), before.take(fine), under[fine])
         now = fine & straddles
         self.field.tubes += int(now.sum())
-        for rows, charts in ((now, code), (fine, under_last)):
-            self._settle(
-                after.take(rows),
-                before.take(rows),
-                charts[rows],
-                np.ones(rows.sum(), bool),
-                factor[rows],
-                ring[rows],
-            )
+        spread, _, _ = self._spread(after.take(now), ring[now], np.ones(now.sum(), bool))
+        self._split_flux(factor[now], spread)
+        self._unfollowed(factor[now], spread)
+        met = np.full((len(code), 8 + SPREAD_RAYS), UNKNOWN, np.int32)
+        met[now, :4], met[:, 4:8], met[now, 8:] = code[now], under_last, spread
+        self._settle(
+            after.take(fine),
+            before.take(fine),
+            met[fine],
+            np.ones(fine.sum(), bool),
+            factor[fine],
+            ring[fine],
+        )
         self.field.bounced.append(
             Bounced(
                 after.take(fine),

@@ -158,12 +158,6 @@ def flux_density(ax, ay, bx, by, cx, cy, D, radii, weights):
     return density
 
 
-@njit(cache=True, nogil=True, error_model="numpy")
-def share_inside_line(e):
-    """Share of a unit disc on the inner side of a line at distance ``e`` inwards, |e| < 1."""
-    return 1.0 - (math.acos(e) - e * math.sqrt(1.0 - e * e)) / math.pi
-
-
 def triangle_disc_fraction(triangle: Floats, *, centre: Floats, radius: float) -> float:
     """Fraction of a triangle's area that a disc covers.
 

@@ -1,8 +1,9 @@
 """Settle beams that straddle an edge, point by point.
 
-Where the corners of a beam disagree on what they see and it is small enough, each receiver
-sample in its footprint asks for itself: is the way to the reflecting point free, and does that
-point see the sun? The reflecting point is the one whose image is nearest to the sample.
+Where the rays of a beam disagree on what they see and it is small enough, each receiver sample
+in its footprint asks for itself: is the way to the reflecting points free, and do they see the
+sun? From a sample the sun's image is a disc on the reflecting surface; a few points spread over
+it tell how much of it is in view, so that shadows keep their soft edge.
 """
 
 from __future__ import annotations
@@ -13,29 +14,23 @@ from typing import NamedTuple
 import numpy as np
 from numba import njit
 
+from causticload.light.blur import Blur
 from causticload.light.bvh import Tracer
 from causticload.light.splat import (
+    COUNT,
+    NO_SAMPLES,
+    NOTE,
     Grids,
-    edge_lines,
-    footprint,
-    half_width,
-    path_at,
-    row_interval,
-    sample_density,
-    samples_per_axis,
+    room_for,
+    walk,
 )
-from causticload.light.tubes import Beams
+from causticload.light.tubes import Beams, image_on_plane
 from causticload.scene.model import Bools, Floats, Ints
 
-
-class Samples(NamedTuple):
-    """Receiver samples within the footprints of beams. ``q`` samples."""
-
-    pair: Ints  # (q,) row of the pair of beam and chart
-    point: Ints  # (q,) number of the receiver point
-    place: Floats  # (q, 3) m, local
-    load: Floats  # (q,) what the sample adds to its cell's mean if the way is free
-    weight: Floats  # (q, 3) barycentric coordinates of the reflecting point in the beam
+# A sample asks from four places, the quarters of its square, each for one point of the sun's disc.
+# At this share of the radius four points keep the second moment of the darkened disc.
+ASKED = 4
+ASKED_AT = 0.67
 
 
 @njit(cache=True, nogil=True, error_model="numpy")
@@ -64,128 +59,39 @@ def nearest_in_triangle(Q, x, y, out):
 
 
 @njit(cache=True, nogil=True, error_model="numpy")
-def _walk(B, beam, factor, radii, weights, ring, chart, G, S):
-    """Write the samples in the footprints into ``S``; without room there, count them at most."""
-    Q, M, w, W = np.empty((3, 2)), np.empty((3, 3)), np.empty(3), np.empty(5)
-    L = np.empty((3, 3))
-    found = 0
-    for pair in range(chart.size):
-        k, c = beam[pair], chart[pair]
-        tan_radii, shares = radii[ring[k]], weights[ring[k]]
-        rho, low, high = footprint(B, k, G, c, tan_radii[-1], Q, M, W)
-        if rho < 0.0:
-            continue
-        n, r = G.normal[c], B.frame[k, 0]
-        cos_g = -(n[0] * r[0] + n[1] * r[1] + n[2] * r[2])
-        h, nu, nv = G.spacing[c], G.shape[c, 0], G.shape[c, 1]
-        area = edge_lines(Q, L)
-        m = samples_per_axis(h, half_width(Q, rho))
-        step = h / m
-        j_first = max(0, math.ceil(low / step - 0.5))
-        j_last = min(nv * m - 1, math.floor(high / step - 0.5))
-        for j in range(j_first, j_last + 1):
-            y = (j + 0.5) * step
-            px, py = M[1, 0] + y * M[1, 2], M[2, 0] + y * M[2, 2]
-            x_in, x_out = row_interval(Q, px, py, M[1, 1], M[2, 1], rho)
-            if x_in > x_out:
-                continue
-            i_first = max(0, math.ceil(x_in / step - 0.5))
-            i_last = min(nu * m - 1, math.floor(x_out / step - 0.5))
-            if S.pair.size == 0:  # only counting: an upper bound will do
-                found += max(0, i_last - i_first + 1)
-                continue
-            for i in range(i_first, i_last + 1):
-                p = G.cell[G.offset[c] + (i // m) * nv + j // m]
-                x = (i + 0.5) * step
-                a, b = px + x * M[1, 1], py + x * M[2, 1]
-                D = path_at(W, a, b, M[0, 0] + x * M[0, 1] + y * M[0, 2])
-                if p < 0 or D <= 0.0:
-                    continue
-                density = sample_density(Q, L, area, a, b, D, rho, tan_radii, shares)
-                if density <= 0.0:
-                    continue
-                nearest_in_triangle(Q, a, b, w)
-                S.pair[found], S.point[found] = pair, p
-                S.load[found] = factor[k] * cos_g * density / (m * m)
-                for q in range(3):
-                    S.weight[found, q] = w[q]
-                    S.place[found, q] = G.origin[c, q] + x * G.u[c, q] + y * G.v[c, q]
-                found += 1
-    return found
+def _ask(B, beam, chart, G, S, clearance, place, weight):
+    """Places that samples ask from, and the reflecting points asked for, as weights of corners."""
+    Q, w = np.empty((3, 2)), np.empty(3)
+    last = -1
+    for i in range(S.pair.size):
+        k, c = beam[S.pair[i]], chart[S.pair[i]]
+        u, v, n, f = G.u[c], G.v[c], G.normal[c], B.frame[k]
+        if S.pair[i] != last:
+            last = S.pair[i]
+            image_on_plane(B.start[k, :3], B.direction[k, :3], B.chief[k], f, G.origin[c], n, Q)
+        for a in range(ASKED):
+            du = (0.25 if a % 2 else -0.25) * S.step[i]
+            dv = (0.25 if a // 2 else -0.25) * S.step[i]
+            turn = 0.5 * math.pi * a + S.point[i]  # turned from cell to cell
+            x = S.across[i, 0] + ASKED_AT * S.rho[i] * math.cos(turn)
+            y = S.across[i, 1] + ASKED_AT * S.rho[i] * math.sin(turn)
+            for q in range(3):
+                aside = du * u[q] + dv * v[q]
+                place[i, a, q] = S.place[i, q] + aside + clearance * n[q]
+                x += aside * f[1, q]
+                y += aside * f[2, q]
+            nearest_in_triangle(Q, x, y, w)
+            for q in range(3):
+                weight[i, a, q] = w[q]
 
 
-def _room(q: int) -> Samples:
-    return Samples(
-        pair=np.empty(q, np.int32),
-        point=np.empty(q, np.int32),
-        place=np.empty((q, 3)),
-        load=np.empty(q),
-        weight=np.empty((q, 3)),
-    )
+class Settled(NamedTuple):
+    """What came of settling: the work, and what stood in the way."""
 
-
-def count_samples(
-    beams: Beams,
-    *,
-    beam: Ints,
-    chart: Ints,
-    radii: Floats,
-    ring: Ints,
-    grids: Grids,
-    enough: int,
-) -> Ints:
-    """Count the samples in each pair's footprint: what it would cost to settle it.
-
-    Parameters
-    ----------
-    beams : Beams
-        ``k`` beams.
-    beam, chart : (p,) int
-        Pairs of a beam and a chart.
-    radii : (s, r) float
-        Tangents of the radii of the sun's discs.
-    ring : (k,) int
-        Row of ``radii`` for each beam.
-    grids : Grids
-        The charts.
-    enough : int
-        Counting stops once there are more.
-
-    Returns
-    -------
-    count : (p,) int
-        Samples in the footprint's rows, by every eighth row where there are many.
-    """
-    return _count(beams, beam, radii, ring, chart, grids, enough)
-
-
-@njit(cache=True, nogil=True, error_model="numpy")
-def _count(B, beam, radii, ring, chart, G, enough):
-    Q, M, W = np.empty((3, 2)), np.empty((3, 3)), np.empty(5)
-    count = np.zeros(chart.size, np.int32)
-    for pair in range(chart.size):
-        k, c = beam[pair], chart[pair]
-        rho, low, high = footprint(B, k, G, c, radii[ring[k]][-1], Q, M, W)
-        if rho < 0.0:
-            continue
-        h = G.spacing[c]
-        step = h / samples_per_axis(h, half_width(Q, rho))
-        low, high = max(0.0, low), min(high, h * G.shape[c, 1])
-        if high <= low:
-            continue
-        rows = int((high - low) / step) + 1
-        stride = max(1, rows // 8)  # an eighth of the rows tells enough
-        for j in range(0, rows, stride):
-            y = low + (j + 0.5) * step
-            a, b = row_interval(
-                Q, M[1, 0] + y * M[1, 2], M[2, 0] + y * M[2, 2], M[1, 1], M[2, 1], rho
-            )
-            a, b = max(0.0, a), min(b, h * G.shape[c, 0])
-            if b > a:
-                count[pair] += (int((b - a) / step) + 1) * stride
-            if count[pair] > enough:
-                break
-    return count
+    rays: int
+    beam: Ints  # (h,) row of a beam
+    triangle: Ints  # (h,) triangle that it meets before the sample
+    direction: Floats  # (h, 3) unit, of the beam there
 
 
 def settle(
@@ -196,15 +102,15 @@ def settle(
     chart: Ints,
     sun_clear: Bools,
     factor: Floats,
-    radii: Floats,
-    weights: Floats,
+    blur: Blur,
     ring: Ints,
     grids: Grids,
     tracer: Tracer,
     sun_direction: Floats,
     clearance_m: float,
     load: Floats,
-) -> None:
+    images: Ints,
+) -> Settled:
     """Add what straddling beams give to each receiver sample that can see it.
 
     Parameters
@@ -219,10 +125,10 @@ def settle(
         Whether the whole beam is known to see the sun.
     factor : (k,) float
         Power of each beam. [m² or W]
-    radii, weights : (s, r) float
-        The sun's discs, as in :func:`causticload.light.splat.splat`.
+    blur : Blur
+        The sun as each kind of surface blurs it.
     ring : (k,) int
-        Row of ``radii`` for each beam.
+        Row of ``blur`` for each beam.
     grids : Grids
         The charts.
     tracer : Tracer
@@ -233,25 +139,42 @@ def settle(
         How far rays keep from the surfaces they start on and end at. [m]
     load : (n,) float
         Mean over each point's cell; added to.
+    images : (n,) int
+        Images of the sun in view from the middle of each point's cell; added to.
+
+    Returns
+    -------
+    settled : Settled
+        Number of rays, and what hides samples.
     """
-    if not len(beam):
-        return
-    args = (beams, beam, factor, radii, weights, ring, chart, grids)
-    S = _room(_walk(*args, _room(0)))
-    used = _walk(*args, S)
-    S = Samples(S.pair[:used], S.point[:used], S.place[:used], S.load[:used], S.weight[:used])
-    row = beam[S.pair]
-    P = S.place + clearance_m * grids.normal[chart[S.pair]]
-    X = reflecting_points(beams, row, S.weight, clearance_m)
-    free = ~blocked_between(tracer, P, X)
+    args = (beams, beam, chart, factor, blur, ring, grids)
+    room = room_for(walk(*args, COUNT, load, images, NO_SAMPLES))
+    used = walk(*args, NOTE, load, images, room)
+    S = room.first(used)
+    P, weight = np.empty((used, ASKED, 3)), np.empty((used, ASKED, 3))
+    _ask(beams, beam, chart, grids, S, clearance_m, P, weight)
+    P, weight = P.reshape(-1, 3), weight.reshape(-1, 3)
+    row = np.repeat(beam[S.pair], ASKED)
+    X = reflecting_points(beams, row, weight, clearance_m)
+    way = P - X
+    length = np.linalg.norm(way, axis=1)
+    way /= np.maximum(length, 1e-12)[:, None]
+    met, distance = tracer.first_hit(X, way)
+    free = distance >= length
+    rays = len(X)
+    hidden = np.flatnonzero(~free)
     if sources is not None:
-        X1 = reflecting_points(sources, row, S.weight, clearance_m)
+        X1 = reflecting_points(sources, row, weight, clearance_m)
+        rays += int(free.sum())
         free[free] = ~blocked_between(tracer, X[free], X1[free])
         X = X1
     ask = np.flatnonzero(free & ~sun_clear[row])
     to_sun = np.broadcast_to(sun_direction, (len(ask), 3))
     free[ask] = ~tracer.occluded(X[ask], np.ascontiguousarray(to_sun))
-    np.add.at(load, S.point[free], S.load[free])
+    share = free.reshape(-1, ASKED).mean(axis=1)
+    np.add.at(load, S.point, share * S.load)
+    np.add.at(images, S.point[S.image & (share >= 0.5)], 1)
+    return Settled(rays + len(ask), row[hidden], met[hidden], way[hidden])
 
 
 def reflecting_points(beams: Beams, beam: Ints, weight: Floats, clearance_m: float) -> Floats:

@@ -20,13 +20,16 @@ from typing import NamedTuple
 import numpy as np
 from numba import njit
 
-from causticload.light.overlap import flux_density, share_inside_line
+from causticload.light.blur import Blur, light_inside_line, light_inside_triangle
+from causticload.light.overlap import flux_density
 from causticload.light.tubes import Beams, image_on_plane
-from causticload.scene.model import Chart, Floats, Ints
+from causticload.scene.model import Bools, Chart, Floats, Ints
 
 # Samples stand no further apart than this share of the footprint's half width.
 SAMPLE_STEP = 0.8
 MOST_SAMPLES = 40  # per cell and axis; a 1 m cell then resolves the sun's image at 3 m
+# Below this share of rho² an image is laid down disc by disc, exactly: the tables err by 1e-4.
+SMALL_IMAGE = 0.05
 
 
 class Grids(NamedTuple):
@@ -135,6 +138,39 @@ def half_width(Q, rho):
 def samples_per_axis(h, width):
     """Number of samples along a cell of size ``h`` for a footprint of this half width."""
     return min(math.ceil(h / (SAMPLE_STEP * width)), MOST_SAMPLES)
+
+
+def sample_counts(beams: Beams, *, edge: Floats, rho: Floats, chart: Ints, grids: Grids) -> Floats:
+    """Tell how many samples beams take on charts, the charts thought without end.
+
+    Parameters
+    ----------
+    beams : Beams
+        ``k`` beams.
+    edge : (k, 3) float
+        Lengths of the edges of their images across the beam. [m]
+    rho : (k,) float
+        Radii of the sun's images. [m]
+    chart : (k,) int
+        The charts.
+    grids : Grids
+        All charts.
+
+    Returns
+    -------
+    count : (k,) float
+        Samples in the footprints: Steiner's formula for a triangle grown by ``rho``.
+    """
+    round_about, longest = edge.sum(axis=1), edge.max(axis=1)
+    half = 0.5 * round_about
+    heron = half * np.prod(half[:, None] - edge, axis=1)
+    area = np.sqrt(np.maximum(heron, 0.0))
+    width = rho + np.divide(area, longest, out=np.zeros_like(area), where=longest > 0.0)
+    h = grids.spacing[chart]
+    step = h / np.minimum(np.ceil(h / (SAMPLE_STEP * np.maximum(width, 1e-9))), MOST_SAMPLES)
+    cos_g = np.abs(np.einsum("ki,ki->k", beams.frame[:, 0], grids.normal[chart]))
+    footprint_area = (area + round_about * rho + np.pi * rho**2) / np.maximum(cos_g, 1e-3)
+    return footprint_area / step**2
 
 
 @njit(cache=True, nogil=True, error_model="numpy")
@@ -248,35 +284,25 @@ def footprint(B, k, G, c, reach, Q, grid_to_beam, plane):
 
 
 @njit(cache=True, nogil=True, error_model="numpy")
-def _cut_density(e, D, radii, shares):
-    """Share of the sun's light inside an edge at distance ``e`` inwards."""
-    total = 0.0
-    for k in range(radii.size):
-        x = e / (D * radii[k])
-        if x >= 1.0:
-            total += shares[k]
-        elif x > -1.0:
-            total += shares[k] * share_inside_line(x)
-    return total
+def sample_density(Q, L, area, a, b, D, reach, edge, mean, radii, shares):
+    """Irradiance across the beam at (a, b) per watt, the plain cases first. [1/m²]
 
-
-@njit(cache=True, nogil=True, error_model="numpy")
-def sample_density(Q, L, area, a, b, D, rho, radii, shares):
-    """Irradiance across the beam at (a, b) per watt: the plain cases first. [1/m²]
-
-    ``L`` are the lines along the edges of ``Q``, ``rho`` is at least the radius of the sun's
-    image there. One edge that cuts the disc has a closed form; corners in it need the arcs.
+    ``L`` are the lines along the edges of ``Q``, ``D`` is the path length; the last five are the
+    sun's row of a :class:`~causticload.light.blur.Blur`.
     """
+    rho = D * reach
     e0 = L[0, 0] * a + L[0, 1] * b + L[0, 2]
     e1 = L[1, 0] * a + L[1, 1] * b + L[1, 2]
     e2 = L[2, 0] * a + L[2, 1] * b + L[2, 2]
     nearest = min(e0, e1, e2)
     if nearest <= -rho:
         return 0.0
-    if nearest >= rho:  # deep inside: the whole disc is covered
-        return 1.0 / area
-    if e0 + e1 + e2 - nearest - max(e0, e1, e2) >= rho:  # one edge cuts the disc
-        return _cut_density(nearest, D, radii, shares) / area
+    if area > SMALL_IMAGE * rho * rho:
+        if nearest >= rho:  # deep inside: the whole disc is covered
+            return 1.0 / area
+        if e0 + e1 + e2 - nearest - max(e0, e1, e2) >= rho:  # one edge cuts the disc
+            return light_inside_line(edge, nearest / rho) / area
+        return light_inside_triangle(Q, L, mean, a, b, rho) / area
     return flux_density(
         Q[0, 0] - a,
         Q[0, 1] - b,
@@ -290,13 +316,76 @@ def sample_density(Q, L, area, a, b, D, rho, radii, shares):
     )
 
 
+class Samples(NamedTuple):
+    """Receiver samples within the footprints of beams. ``q`` samples."""
+
+    pair: Ints  # (q,) row of the pair of beam and chart
+    point: Ints  # (q,) number of the receiver point
+    place: Floats  # (q, 3) m, local
+    across: Floats  # (q, 2) m, where the sample stands across the beam
+    step: Floats  # (q,) m, distance between samples along a row and between rows
+    load: Floats  # (q,) what the sample adds to its cell's mean if the way is free
+    rho: Floats  # (q,) m, radius of the sun's image there
+    image: Bools  # (q,) the sample stands for the middle of its cell, within the beam's image
+
+    def first(self, n: int) -> Samples:
+        """Return the first ``n`` samples."""
+        return Samples(
+            self.pair[:n],
+            self.point[:n],
+            self.place[:n],
+            self.across[:n],
+            self.step[:n],
+            self.load[:n],
+            self.rho[:n],
+            self.image[:n],
+        )
+
+
+def room_for(q: int) -> Samples:
+    """Make room for ``q`` samples.
+
+    Parameters
+    ----------
+    q : int
+        How many.
+
+    Returns
+    -------
+    samples : Samples
+        Uninitialised arrays.
+    """
+    return Samples(
+        pair=np.empty(q, np.int32),
+        point=np.empty(q, np.int32),
+        place=np.empty((q, 3)),
+        across=np.empty((q, 2)),
+        step=np.empty(q),
+        load=np.empty(q),
+        rho=np.empty(q),
+        image=np.empty(q, np.bool_),
+    )
+
+
+# What a walk does with the samples it meets.
+ADD, COUNT, NOTE = 0, 1, 2
+
+
 @njit(cache=True, nogil=True, error_model="numpy")
-def _splat(B, factor, radii, weights, ring, chart, G, E, images):
+def walk(B, beam, chart, factor, blur, ring, G, task, E, images, S):
+    """Walk the grid rows in the footprint of each pair of a beam and a chart.
+
+    ``ADD`` adds loads to ``E`` and ``images``; ``COUNT`` returns how many samples the rows hold at
+    most; ``NOTE`` writes the samples into ``S`` and returns how many.
+    """
     Q, M, L, W = np.empty((3, 2)), np.empty((3, 3)), np.empty((3, 3)), np.empty(5)
-    for k in range(chart.size):
-        c = chart[k]
-        tan_radii, shares = radii[ring[k]], weights[ring[k]]
-        rho, low, high = footprint(B, k, G, c, tan_radii[-1], Q, M, W)
+    found = 0
+    for pair in range(chart.size):
+        k, c = beam[pair], chart[pair]
+        # Rows of tables are picked out here: in the loops below it would cost more than the sums.
+        reach, edge, mean = blur.reach[ring[k]], blur.edge[ring[k]], blur.mean[ring[k]]
+        radii, shares = blur.radii[ring[k]], blur.weights[ring[k]]
+        rho, low, high = footprint(B, k, G, c, reach, Q, M, W)
         if rho < 0.0:
             continue
         n, r = G.normal[c], B.frame[k, 0]
@@ -305,6 +394,7 @@ def _splat(B, factor, radii, weights, ring, chart, G, E, images):
         area = edge_lines(Q, L)
         m = samples_per_axis(h, half_width(Q, rho))
         step = h / m
+        off_middle = (0.5 * m - m // 2 - 0.5) * step  # from the middle sample to the cell's middle
         strength = factor[k] * cos_g / (m * m)
         j_first = max(0, math.ceil(low / step - 0.5))
         j_last = min(nv * m - 1, math.floor(high / step - 0.5))
@@ -316,8 +406,17 @@ def _splat(B, factor, radii, weights, ring, chart, G, E, images):
                 continue
             i_first = max(0, math.ceil(x_in / step - 0.5))
             i_last = min(nu * m - 1, math.floor(x_out / step - 0.5))
+            if task == COUNT:
+                found += max(0, i_last - i_first + 1)
+                continue
+            # Sample i is number ``sub`` in cell ``column`` of the row.
+            column, sub = i_first // m, i_first % m - 1
+            row, middle_row = G.offset[c] + j // m, j % m == m // 2
             for i in range(i_first, i_last + 1):
-                p = G.cell[G.offset[c] + (i // m) * nv + j // m]
+                sub += 1
+                if sub == m:
+                    column, sub = column + 1, 0
+                p = G.cell[row + column * nv]
                 if p < 0:
                     continue
                 x = (i + 0.5) * step
@@ -325,25 +424,38 @@ def _splat(B, factor, radii, weights, ring, chart, G, E, images):
                 D = path_at(W, a, b, M[0, 0] + x * M[0, 1] + y * M[0, 2])
                 if D <= 0.0:
                     continue
-                density = sample_density(Q, L, area, a, b, D, rho, tan_radii, shares)
-                E[p] += strength * density
-                if i % m == m // 2 and j % m == m // 2:
-                    x += (0.5 * m - m // 2 - 0.5) * step  # from the sample to the cell's middle
-                    yy = y + (0.5 * m - m // 2 - 0.5) * step
-                    a, b = (
-                        M[1, 0] + x * M[1, 1] + yy * M[1, 2],
-                        M[2, 0] + x * M[2, 1] + yy * M[2, 2],
+                density = sample_density(Q, L, area, a, b, D, reach, edge, mean, radii, shares)
+                if density <= 0.0:
+                    continue
+                seen = (
+                    middle_row
+                    and sub == m // 2
+                    and has_inside(
+                        Q,
+                        a + off_middle * (M[1, 1] + M[1, 2]),
+                        b + off_middle * (M[2, 1] + M[2, 2]),
                     )
-                    if has_inside(Q, a, b):
+                )
+                if task == ADD:
+                    E[p] += strength * density
+                    if seen:
                         images[p] += 1
+                    continue
+                S.pair[found], S.point[found] = pair, p
+                S.load[found], S.image[found] = strength * density, seen
+                S.across[found, 0], S.across[found, 1], S.step[found] = a, b, step
+                S.rho[found] = D * reach
+                for q in range(3):
+                    S.place[found, q] = G.origin[c, q] + x * G.u[c, q] + y * G.v[c, q]
+                found += 1
+    return found
 
 
 def splat(
     beams: Beams,
     *,
     factor: Floats,
-    radii: Floats,
-    weights: Floats,
+    blur: Blur,
     ring: Ints,
     chart: Ints,
     grids: Grids,
@@ -358,11 +470,10 @@ def splat(
         ``k`` beams, each landing wholly on one chart.
     factor : (k,) float
         Power of each beam; loads are in its unit per m². [m² or W]
-    radii, weights : (s, r) float
-        Concentric discs that make up the sun for ``s`` kinds of surface: tangents of their
-        angular radii, growing along a row, and their shares of the flux, which add up to 1.
+    blur : Blur
+        The sun as ``s`` kinds of surface blur it.
     ring : (k,) int
-        Row of ``radii`` for each beam.
+        Row of ``blur`` for each beam.
     chart : (k,) int
         Number of the chart that each beam lands on.
     grids : Grids
@@ -372,4 +483,8 @@ def splat(
     images : (n,) int
         Number of tubes whose image holds the middle of the cell; added to.
     """
-    _splat(beams, factor, radii, weights, ring, chart, grids, load, images)
+    beam = np.arange(len(chart), dtype=np.int32)
+    walk(beams, beam, chart, factor, blur, ring, grids, ADD, load, images, NO_SAMPLES)
+
+
+NO_SAMPLES = room_for(0)

@@ -11,7 +11,7 @@ from numba import njit
 from causticload.light.bvh import Tracer
 from causticload.light.facets import Facets
 from causticload.light.tubes import Beams
-from causticload.scene.model import Floats, Ints, Scene
+from causticload.scene.model import Bools, Floats, Ints, Scene
 
 # Codes of what a ray meets. Charts are their numbers, from 0; mirrors count down from MIRROR.
 SKY, BLOCKED, UNKNOWN, MIRROR = -1, -2, -3, -10
@@ -74,6 +74,43 @@ def _codes(triangle, direction, face_normal, front, back, chart, out, under):
         out[k] = front[t] if toward < 0.0 else back[t]
         if toward < 0.0:
             under[k] = chart[t]
+
+
+def meanings_of(
+    triangle: Ints, direction: Floats, *, F: Facets, meanings: Meanings
+) -> tuple[Ints, Ints]:
+    """Say what rays meet.
+
+    Parameters
+    ----------
+    triangle : (k,) int
+        Triangle met, -1 for none.
+    direction : (k, 3) float
+        Directions of the rays.
+    F : Facets
+        The scene's triangles.
+    meanings : Meanings
+        What each triangle is to a ray.
+
+    Returns
+    -------
+    code : (k,) int
+        What it is.
+    under : (k,) int
+        Chart of a mirror met that is a receiver too, -1 for none.
+    """
+    code, under = np.empty(len(triangle), np.int32), np.empty(len(triangle), np.int32)
+    _codes(
+        np.ascontiguousarray(triangle, dtype=np.int32),
+        direction,
+        F.face_normal,
+        meanings.front,
+        meanings.back,
+        meanings.chart,
+        code,
+        under,
+    )
+    return code, under
 
 
 @njit(cache=True, nogil=True, error_model="numpy")
@@ -173,17 +210,7 @@ def find_targets(
     direction[:, :3] = rim
     hit, _ = tracer.first_hit(origin.reshape(-1, 3), rim.reshape(-1, 3))
     triangle[:, :3] = hit.reshape(k, 3)
-    code, under = np.empty(4 * k, np.int32), np.empty(4 * k, np.int32)
-    _codes(
-        triangle.ravel(),
-        direction.reshape(-1, 3),
-        F.face_normal,
-        meanings.front,
-        meanings.back,
-        meanings.chart,
-        code,
-        under,
-    )
+    code, under = meanings_of(triangle.ravel(), direction.reshape(-1, 3), F=F, meanings=meanings)
     return code.reshape(k, 4), under.reshape(k, 4)
 
 
@@ -216,12 +243,106 @@ def count_sun(beams: Beams, *, tracer: Tracer, sun_direction: Floats, clearance_
     return 4 - hidden.reshape(k, 4).sum(axis=1).astype(np.int32)
 
 
+@njit(cache=True, nogil=True, error_model="numpy")
+def _spread_rays(B, reach, ring, clearance, origin, direction):
+    """Rays spread evenly over a beam's start and, at each, over the sun's disc."""
+    rays = origin.shape[1]
+    for k in range(origin.shape[0]):
+        f = B.frame[k]
+        for a in range(rays):
+            # Roberts' low-discrepancy sequence in three dimensions; the fourth number is the ray's
+            # own rank, which is spread evenly by itself.
+            u = (0.5 + (a + 1) * 0.8191725133961645) % 1.0
+            v = (0.5 + (a + 1) * 0.6710436067037893) % 1.0
+            turn = 2.0 * math.pi * ((0.5 + (a + 1) * 0.5497004779019703) % 1.0)
+            r = math.sqrt((a + 0.5) / rays) * reach[ring[k]]
+            if u + v > 1.0:
+                u, v = 1.0 - u, 1.0 - v
+            w = 1.0 - u - v
+            norm = 0.0
+            for i in range(3):
+                origin[k, a, i] = (
+                    w * B.start[k, 0, i]
+                    + u * B.start[k, 1, i]
+                    + v * B.start[k, 2, i]
+                    + clearance * B.side[k, i]
+                )
+                d = (
+                    w * B.direction[k, 0, i]
+                    + u * B.direction[k, 1, i]
+                    + v * B.direction[k, 2, i]
+                    + r * (math.cos(turn) * f[1, i] + math.sin(turn) * f[2, i])
+                )
+                direction[k, a, i] = d
+                norm += d * d
+            norm = math.sqrt(norm)
+            for i in range(3):
+                direction[k, a, i] /= norm
+
+
+def spread_targets(
+    beams: Beams,
+    *,
+    F: Facets,
+    meanings: Meanings,
+    tracer: Tracer,
+    reach: Floats,
+    ring: Ints,
+    clearance_m: float,
+    sun_direction: Floats | None,
+    rays: int,
+) -> tuple[Ints, Ints, Bools]:
+    """Send rays spread over each beam, to share out the light of beams whose rays disagree.
+
+    Parameters
+    ----------
+    beams : Beams
+        ``k`` beams.
+    F : Facets
+        The scene's triangles.
+    meanings : Meanings
+        What each triangle is to a ray.
+    tracer : Tracer
+        Finds what rays meet.
+    reach : (s,) float
+        Tangent of the angular radius of the sun's largest disc for each kind of surface.
+    ring : (k,) int
+        Row of ``reach`` for each beam.
+    clearance_m : float
+        How far above the facet rays are traced from. [m]
+    sun_direction : (3,) float or None
+        Unit vector to the sun, to ask whether each ray's start sees it; None where it does.
+    rays : int
+        Rays ``m`` per beam.
+
+    Returns
+    -------
+    code : (k, m) int
+        What the rays meet.
+    under : (k, m) int
+        Chart of a mirror met that is a receiver too, -1 for none.
+    lit : (k, m) bool
+        Whether the ray's start sees the sun.
+    """
+    shape = (len(beams.chief), rays)
+    starts, ways = np.empty((*shape, 3)), np.empty((*shape, 3))
+    _spread_rays(beams, reach, ring, clearance_m, starts, ways)
+    origin, direction = starts.reshape(-1, 3), ways.reshape(-1, 3)
+    hit, _ = tracer.first_hit(origin, direction)
+    lit = np.ones(shape, bool)
+    if sun_direction is not None:
+        to_sun = np.ascontiguousarray(np.broadcast_to(sun_direction, origin.shape))
+        lit = ~tracer.occluded(origin, to_sun).reshape(shape)
+    code, under = meanings_of(hit, direction, F=F, meanings=meanings)
+    return code.reshape(shape), under.reshape(shape), lit
+
+
 def distinct_charts(code: Ints) -> tuple[Ints, Ints]:
     """List each beam with each chart among its codes once.
 
     Parameters
     ----------
-    code : (k, 4) int
+    code : (k, m) int
         What the rays of each beam meet.
 
     Returns
