@@ -59,8 +59,11 @@ def nearest_in_triangle(Q, x, y, out):
 
 
 @njit(cache=True, nogil=True, error_model="numpy")
-def _ask(B, beam, chart, G, S, clearance, place, weight):
-    """Places that samples ask from, and the reflecting points asked for, as weights of corners."""
+def _ask(B, beam, chart, G, S, clearance, start, way, length, weight):
+    """Write the rays that samples ask for: from reflecting points to places on the receiver.
+
+    ``weight`` takes the reflecting points as weights of the beam's corners.
+    """
     Q, w = np.empty((3, 2)), np.empty(3)
     last = -1
     for i in range(S.pair.size):
@@ -69,20 +72,44 @@ def _ask(B, beam, chart, G, S, clearance, place, weight):
         if S.pair[i] != last:
             last = S.pair[i]
             image_on_plane(B.start[k, :3], B.direction[k, :3], B.chief[k], f, G.origin[c], n, Q)
+        # A point of the sun's image, turned from cell to cell and by a quarter from ray to ray.
+        px = ASKED_AT * S.rho[i] * math.cos(S.point[i])
+        py = ASKED_AT * S.rho[i] * math.sin(S.point[i])
         for a in range(ASKED):
+            r = ASKED * i + a
             du = (0.25 if a % 2 else -0.25) * S.step[i]
             dv = (0.25 if a // 2 else -0.25) * S.step[i]
-            turn = 0.5 * math.pi * a + S.point[i]  # turned from cell to cell
-            x = S.across[i, 0] + ASKED_AT * S.rho[i] * math.cos(turn)
-            y = S.across[i, 1] + ASKED_AT * S.rho[i] * math.sin(turn)
+            x, y = S.across[i, 0] + px, S.across[i, 1] + py
+            px, py = -py, px
             for q in range(3):
                 aside = du * u[q] + dv * v[q]
-                place[i, a, q] = S.place[i, q] + aside + clearance * n[q]
+                way[r, q] = S.place[i, q] + aside + clearance * n[q]
                 x += aside * f[1, q]
                 y += aside * f[2, q]
             nearest_in_triangle(Q, x, y, w)
+            long2 = 0.0
             for q in range(3):
-                weight[i, a, q] = w[q]
+                weight[r, q] = w[q]
+                start[r, q] = clearance * B.side[k, q]
+                for j in range(3):
+                    start[r, q] += w[j] * B.start[k, j, q]
+                way[r, q] -= start[r, q]
+                long2 += way[r, q] ** 2
+            length[r] = math.sqrt(long2)
+            for q in range(3):
+                way[r, q] /= max(length[r], 1e-12)
+
+
+@njit(cache=True, nogil=True, error_model="numpy")
+def _add(S, free, load, images):
+    """Add what samples take, by the share of their rays that are free."""
+    for i in range(S.pair.size):
+        share = 0.0
+        for a in range(ASKED):
+            share += free[ASKED * i + a] / ASKED
+        load[S.point[i]] += share * S.load[i]
+        if S.image[i] and share >= 0.5:
+            images[S.point[i]] += 1
 
 
 class Settled(NamedTuple):
@@ -151,14 +178,10 @@ def settle(
     room = room_for(walk(*args, COUNT, load, images, NO_SAMPLES))
     used = walk(*args, NOTE, load, images, room)
     S = room.first(used)
-    P, weight = np.empty((used, ASKED, 3)), np.empty((used, ASKED, 3))
-    _ask(beams, beam, chart, grids, S, clearance_m, P, weight)
-    P, weight = P.reshape(-1, 3), weight.reshape(-1, 3)
+    X, way, weight = (np.empty((ASKED * used, 3)) for _ in range(3))
+    length = np.empty(ASKED * used)
+    _ask(beams, beam, chart, grids, S, clearance_m, X, way, length, weight)
     row = np.repeat(beam[S.pair], ASKED)
-    X = reflecting_points(beams, row, weight, clearance_m)
-    way = P - X
-    length = np.linalg.norm(way, axis=1)
-    way /= np.maximum(length, 1e-12)[:, None]
     met, distance = tracer.first_hit(X, way)
     free = distance >= length
     rays = len(X)
@@ -171,9 +194,7 @@ def settle(
     ask = np.flatnonzero(free & ~sun_clear[row])
     to_sun = np.broadcast_to(sun_direction, (len(ask), 3))
     free[ask] = ~tracer.occluded(X[ask], np.ascontiguousarray(to_sun))
-    share = free.reshape(-1, ASKED).mean(axis=1)
-    np.add.at(load, S.point, share * S.load)
-    np.add.at(images, S.point[S.image & (share >= 0.5)], 1)
+    _add(S, free, load, images)
     return Settled(rays + len(ask), row[hidden], met[hidden], way[hidden])
 
 
