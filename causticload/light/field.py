@@ -56,7 +56,7 @@ LINEAR = 0.15
 # ...or by less than this many metres, which no receiver cell or eye can tell.
 LINEAR_FLOOR_M = 0.002
 # A straddling tube with no more samples than this asks for each instead of being halved.
-SETTLE_SAMPLES = 128
+SETTLE_SAMPLES = 512
 # Rays that share out the light of a settled tube among the sky, obstructions and mirrors.
 SPREAD_RAYS = 16
 # No tube is halved more often than this on its own account: 2^-20 of a facet is dust.

@@ -31,6 +31,9 @@ from causticload.scene.model import Bools, Floats, Ints
 # At this share of the radius four points keep the second moment of the darkened disc.
 ASKED = 4
 ASKED_AT = 0.67
+# A sample that adds less than this many suns asks once, from its own place for its own image: the
+# soft edge of a shadow that weak is below what a criterion can tell.
+ASK_ONCE = 0.01
 
 
 @njit(cache=True, nogil=True, error_model="numpy")
@@ -59,11 +62,17 @@ def nearest_in_triangle(Q, x, y, out):
 
 
 @njit(cache=True, nogil=True, error_model="numpy")
-def _ask(B, beam, chart, G, S, clearance, start, way, length, weight):
-    """Write the rays that samples ask for: from reflecting points to places on the receiver.
+def _rays_of(S, first):
+    """Number the rays that samples send: sample i sends rays first[i] to first[i + 1]."""
+    first[0] = 0
+    for i in range(S.pair.size):
+        first[i + 1] = first[i] + (1 if S.load[i] < ASK_ONCE else ASKED)
+    return first[-1]
 
-    ``weight`` takes the reflecting points as weights of the beam's corners.
-    """
+
+@njit(cache=True, nogil=True, error_model="numpy")
+def _ask(B, beam, chart, G, S, first, clearance, R):
+    """Write the rays that samples ask for: from reflecting points to places on the receiver."""
     Q, w = np.empty((3, 2)), np.empty(3)
     last = -1
     for i in range(S.pair.size):
@@ -73,43 +82,57 @@ def _ask(B, beam, chart, G, S, clearance, start, way, length, weight):
             last = S.pair[i]
             image_on_plane(B.start[k, :3], B.direction[k, :3], B.chief[k], f, G.origin[c], n, Q)
         # A point of the sun's image, turned from cell to cell and by a quarter from ray to ray.
-        px = ASKED_AT * S.rho[i] * math.cos(S.point[i])
-        py = ASKED_AT * S.rho[i] * math.sin(S.point[i])
-        for a in range(ASKED):
-            r = ASKED * i + a
-            du = (0.25 if a % 2 else -0.25) * S.step[i]
-            dv = (0.25 if a // 2 else -0.25) * S.step[i]
+        px = py = quarter = 0.0
+        if first[i + 1] - first[i] > 1:
+            px = ASKED_AT * S.rho[i] * math.cos(S.point[i])
+            py = ASKED_AT * S.rho[i] * math.sin(S.point[i])
+            quarter = 0.25 * S.step[i]
+        for r in range(first[i], first[i + 1]):
+            a = r - first[i]
+            du = quarter if a % 2 else -quarter
+            dv = quarter if a // 2 else -quarter
             x, y = S.across[i, 0] + px, S.across[i, 1] + py
             px, py = -py, px
             for q in range(3):
                 aside = du * u[q] + dv * v[q]
-                way[r, q] = S.place[i, q] + aside + clearance * n[q]
+                R.way[r, q] = S.place[i, q] + aside + clearance * n[q]
                 x += aside * f[1, q]
                 y += aside * f[2, q]
             nearest_in_triangle(Q, x, y, w)
             long2 = 0.0
             for q in range(3):
-                weight[r, q] = w[q]
-                start[r, q] = clearance * B.side[k, q]
+                R.weight[r, q] = w[q]
+                R.start[r, q] = clearance * B.side[k, q]
                 for j in range(3):
-                    start[r, q] += w[j] * B.start[k, j, q]
-                way[r, q] -= start[r, q]
-                long2 += way[r, q] ** 2
-            length[r] = math.sqrt(long2)
+                    R.start[r, q] += w[j] * B.start[k, j, q]
+                R.way[r, q] -= R.start[r, q]
+                long2 += R.way[r, q] ** 2
+            R.beam[r], R.length[r] = k, math.sqrt(long2)
             for q in range(3):
-                way[r, q] /= max(length[r], 1e-12)
+                R.way[r, q] /= max(R.length[r], 1e-12)
 
 
 @njit(cache=True, nogil=True, error_model="numpy")
-def _add(S, free, load, images):
+def _add(S, first, free, load, images):
     """Add what samples take, by the share of their rays that are free."""
     for i in range(S.pair.size):
         share = 0.0
-        for a in range(ASKED):
-            share += free[ASKED * i + a] / ASKED
+        for r in range(first[i], first[i + 1]):
+            share += free[r]
+        share /= first[i + 1] - first[i]
         load[S.point[i]] += share * S.load[i]
         if S.image[i] and share >= 0.5:
             images[S.point[i]] += 1
+
+
+class _Rays(NamedTuple):
+    """What samples ask for. ``r`` rays."""
+
+    beam: Ints  # (r,) row of the beam
+    start: Floats  # (r, 3) m, reflecting point, clear of its facet
+    way: Floats  # (r, 3) unit, from there to the sample
+    length: Floats  # (r,) m
+    weight: Floats  # (r, 3) the reflecting point as weights of the beam's corners
 
 
 class Settled(NamedTuple):
@@ -178,24 +201,25 @@ def settle(
     room = room_for(walk(*args, COUNT, load, images, NO_SAMPLES))
     used = walk(*args, NOTE, load, images, room)
     S = room.first(used)
-    X, way, weight = (np.empty((ASKED * used, 3)) for _ in range(3))
-    length = np.empty(ASKED * used)
-    _ask(beams, beam, chart, grids, S, clearance_m, X, way, length, weight)
-    row = np.repeat(beam[S.pair], ASKED)
-    met, distance = tracer.first_hit(X, way)
-    free = distance >= length
-    rays = len(X)
+    first = np.empty(used + 1, np.int64)
+    n = _rays_of(S, first)
+    R = _Rays(
+        np.empty(n, np.int32), np.empty((n, 3)), np.empty((n, 3)), np.empty(n), np.empty((n, 3))
+    )
+    _ask(beams, beam, chart, grids, S, first, clearance_m, R)
+    met, distance = tracer.first_hit(R.start, R.way)
+    free = distance >= R.length
     hidden = np.flatnonzero(~free)
+    rays, X = n, R.start
     if sources is not None:
-        X1 = reflecting_points(sources, row, weight, clearance_m)
+        X = reflecting_points(sources, R.beam, R.weight, clearance_m)
         rays += int(free.sum())
-        free[free] = ~blocked_between(tracer, X[free], X1[free])
-        X = X1
-    ask = np.flatnonzero(free & ~sun_clear[row])
+        free[free] = ~blocked_between(tracer, R.start[free], X[free])
+    ask = np.flatnonzero(free & ~sun_clear[R.beam])
     to_sun = np.broadcast_to(sun_direction, (len(ask), 3))
     free[ask] = ~tracer.occluded(X[ask], np.ascontiguousarray(to_sun))
-    _add(S, free, load, images)
-    return Settled(rays + len(ask), row[hidden], met[hidden], way[hidden])
+    _add(S, first, free, load, images)
+    return Settled(rays + len(ask), R.beam[hidden], met[hidden], R.way[hidden])
 
 
 def reflecting_points(beams: Beams, beam: Ints, weight: Floats, clearance_m: float) -> Floats:
