@@ -120,16 +120,16 @@ def light_inside_triangle(Q, L, mean, x, y, rho):
     """Share of the light of a disc of radius ``rho`` about (x, y) that falls within ``Q``.
 
     ``L`` holds the lines along the edges of ``Q``: a x + b y + c is the distance inwards. ``Q`` is
-    no speck: it is larger than a hundredth of the disc. The angles of the edges' parts outside the
+    no speck: its area is a hundredth of the disc's at least. The angles of the edges' parts outside the
     disc are added as one complex product, whose argument is their sum but for a whole turn.
     """
     inner, re, im = 0.0, 1.0, 0.0
-    centre_inside = True
+    nearest = math.inf
     for j in range(3):
         k = (j + 1) % 3
         a, b = L[j, 0], L[j, 1]
         h = (a * x + b * y + L[j, 2]) / rho
-        centre_inside = centre_inside and h > 0.0
+        nearest = min(nearest, h)
         # Along the edge, the inner side on the left.
         s1 = (b * (Q[j, 0] - x) - a * (Q[j, 1] - y)) / rho
         s2 = (b * (Q[k, 0] - x) - a * (Q[k, 1] - y)) / rho
@@ -151,6 +151,7 @@ def light_inside_triangle(Q, L, mean, x, y, rho):
         d = abs(h)
         inner += h * (high * _mean_at(mean, d, abs(high)) - low * _mean_at(mean, d, abs(low)))
     light = (math.atan2(im, re) + inner) / (2.0 * math.pi)
-    if light < 1e-3 and (centre_inside or light < -1e-3):
+    # The whole turn: all light is inside only if no edge comes near, none only if one does.
+    if light < -1e-3 or (nearest > 0.5 and light < 0.5):
         light += 1.0
     return min(1.0, max(0.0, light))
