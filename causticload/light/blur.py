@@ -120,8 +120,8 @@ def light_inside_triangle(Q, L, mean, x, y, rho):
     """Share of the light of a disc of radius ``rho`` about (x, y) that falls within ``Q``.
 
     ``L`` holds the lines along the edges of ``Q``: a x + b y + c is the distance inwards. ``Q`` is
-    no speck: its area is a hundredth of the disc's at least. The angles of the edges' parts outside the
-    disc are added as one complex product, whose argument is their sum but for a whole turn.
+    no speck: its area is a hundredth of the disc's at least. The angles of the edges' parts outside
+    the disc are added as one complex product, whose argument is their sum but for a whole turn.
     """
     inner, re, im = 0.0, 1.0, 0.0
     nearest = math.inf
