@@ -272,6 +272,8 @@ class _Walk:
         lost = np.flatnonzero((outcome == GRAZES) & (sun > 0.0))
         self._add("unfollowed", self._take_in(generation.take(lost), beams.take(lost)))
         keep = (outcome == LIT) & (sun > 0.0)
+        if keep.all():
+            return generation, beams
         return generation.take(keep), beams.take(keep)
 
     def _targets(self, generation: Generation, beams: Beams) -> tuple[Ints, Ints]:
@@ -354,7 +356,8 @@ class _Walk:
     def _is_fine(self, beams: Beams, chart: Ints, ring: Ints, age: Ints) -> tuple[Ints, Bools]:
         """Return the edge to halve, and whether three corners describe the image well enough."""
         G = self.lit.grids
-        error, length, depth = image_errors(beams, o=G.origin[chart], n=G.normal[chart])
+        every = np.arange(len(chart), dtype=np.int32)
+        error, length, depth = image_errors(beams, every, o=G.origin[chart], n=G.normal[chart])
         rho = (depth + beams.longest) * self.blur.reach[ring]
         worst = error.max(axis=1)
         fine = (worst <= np.maximum(LINEAR * rho, LINEAR_FLOOR_M)) | (age >= MOST_HALVINGS)
@@ -362,7 +365,7 @@ class _Walk:
         # A corner ray that runs along the plane never meets it: halve until that hardly matters.
         skims = depth < 0.0
         fine[skims] = age[skims] >= SKIM_HALVINGS
-        edge[skims] = _longest_edge(beams.take(skims))
+        edge[skims] = _longest_edge(beams)[skims]
         return edge, fine
 
     def _splat(self, beams: Beams, factor: Floats, ring: Ints, chart: Ints) -> None:
@@ -405,15 +408,13 @@ class _Walk:
             settled.solar * self._mirrored(ring[done]),
             ring[done],
         )
-        rest = beams.take(~done)
-        return halve_generation(generation.take(~done), _longest_edge(rest))
+        return halve_generation(generation.take(~done), _longest_edge(beams)[~done])
 
     def _images(self, beams: Beams, charts: Ints, ring: Ints) -> _Images:
         """How each beam lands on each of the charts given for it, (n, 4)."""
         G = self.lit.grids
         beam, chart = distinct_charts(charts)
-        rows = beams.take(beam)
-        error, length, depth = image_errors(rows, o=G.origin[chart], n=G.normal[chart])
+        error, length, depth = image_errors(beams, beam, o=G.origin[chart], n=G.normal[chart])
         rho = self.blur.reach[ring[beam]] * (depth + beams.longest[beam])
         return _Images(
             beam,
@@ -422,7 +423,7 @@ class _Walk:
             length.max(axis=1),
             depth,
             rho,
-            sample_counts(rows, edge=length, rho=rho, chart=chart, grids=G),
+            sample_counts(beams.frame[beam, 0], edge=length, rho=rho, chart=chart, grids=G),
         )
 
     def _is_bent(self, beams: Beams, charts: Ints, ring: Ints, age: Ints) -> Bools:

@@ -140,13 +140,15 @@ def samples_per_axis(h, width):
     return min(math.ceil(h / (SAMPLE_STEP * width)), MOST_SAMPLES)
 
 
-def sample_counts(beams: Beams, *, edge: Floats, rho: Floats, chart: Ints, grids: Grids) -> Floats:
+def sample_counts(
+    direction: Floats, *, edge: Floats, rho: Floats, chart: Ints, grids: Grids
+) -> Floats:
     """Tell how many samples beams take on charts, the charts thought without end.
 
     Parameters
     ----------
-    beams : Beams
-        ``k`` beams.
+    direction : (k, 3) float
+        Unit vectors along the beams.
     edge : (k, 3) float
         Lengths of the edges of their images across the beam. [m]
     rho : (k,) float
@@ -168,7 +170,7 @@ def sample_counts(beams: Beams, *, edge: Floats, rho: Floats, chart: Ints, grids
     width = rho + np.divide(area, longest, out=np.zeros_like(area), where=longest > 0.0)
     h = grids.spacing[chart]
     step = h / np.minimum(np.ceil(h / (SAMPLE_STEP * np.maximum(width, 1e-9))), MOST_SAMPLES)
-    cos_g = np.abs(np.einsum("ki,ki->k", beams.frame[:, 0], grids.normal[chart]))
+    cos_g = np.abs(np.einsum("ki,ki->k", direction, grids.normal[chart]))
     footprint_area = (area + round_about * rho + np.pi * rho**2) / np.maximum(cos_g, 1e-3)
     return footprint_area / step**2
 

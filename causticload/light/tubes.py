@@ -321,51 +321,57 @@ def image_on_plane(start, direction, chief, frame, o, n, Q):
 
 
 @njit(cache=True, nogil=True, error_model="numpy")
-def _image_errors(B, o, n, error, longest, depth):
+def _image_errors(B, beam, o, n, error, longest, depth):
     Q, M = np.empty((3, 2)), np.empty((3, 2))
-    for k in range(depth.size):
+    for p in range(depth.size):
+        k = beam[p]
         near, far = image_on_plane(
-            B.start[k, :3], B.direction[k, :3], B.chief[k], B.frame[k], o[k], n[k], Q
+            B.start[k, :3], B.direction[k, :3], B.chief[k], B.frame[k], o[p], n[p], Q
         )
         mid_near, _ = image_on_plane(
-            B.start[k, 3:], B.direction[k, 3:], B.chief[k], B.frame[k], o[k], n[k], M
+            B.start[k, 3:], B.direction[k, 3:], B.chief[k], B.frame[k], o[p], n[p], M
         )
         if near < 0.0 or mid_near < 0.0:
-            depth[k] = -1.0
+            depth[p] = -1.0
             continue
-        depth[k] = 0.5 * (near + far)
+        depth[p] = 0.5 * (near + far)
         for e in range(3):
             a, b = e, (e + 1) % 3
-            error[k, e] = math.hypot(
+            error[p, e] = math.hypot(
                 M[e, 0] - 0.5 * (Q[a, 0] + Q[b, 0]), M[e, 1] - 0.5 * (Q[a, 1] + Q[b, 1])
             )
-            longest[k, e] = math.hypot(Q[a, 0] - Q[b, 0], Q[a, 1] - Q[b, 1])
+            longest[p, e] = math.hypot(Q[a, 0] - Q[b, 0], Q[a, 1] - Q[b, 1])
 
 
-def image_errors(beams: Beams, *, o: Floats, n: Floats) -> tuple[Floats, Floats, Floats]:
+def image_errors(
+    beams: Beams, beam: Ints, *, o: Floats, n: Floats
+) -> tuple[Floats, Floats, Floats]:
     """How far three corner rays misplace the middles of the image's edges.
 
     Parameters
     ----------
     beams : Beams
-        ``k`` beams.
-    o, n : (k, 3) float
-        A point and the unit normal of the plane that each beam lands on.
+        Any number of beams.
+    beam : (p,) int
+        Row of the beam, one for each pair of a beam and a plane.
+    o, n : (p, 3) float
+        A point and the unit normal of the plane.
 
     Returns
     -------
-    error : (k, 3) float
+    error : (p, 3) float
         Distance across the beam between the image of an edge's middle and the middle of the
         image's edge. [m]
-    length : (k, 3) float
+    length : (p, 3) float
         Length of the image's edges across the beam. [m]
-    depth : (k,) float
+    depth : (p,) float
         Distance to the image along the chief ray; -1 where a ray misses the plane's front. [m]
     """
-    k = len(beams.chief)
-    error, length, depth = np.zeros((k, 3)), np.zeros((k, 3)), np.empty(k)
+    p = len(beam)
+    error, length, depth = np.zeros((p, 3)), np.zeros((p, 3)), np.empty(p)
     _image_errors(
         beams,
+        beam,
         np.ascontiguousarray(o, dtype=float),
         np.ascontiguousarray(n, dtype=float),
         error,
