@@ -244,6 +244,7 @@ class _Bar:
     NAMES: ClassVar = {
         "days": "Days of the year",
         "peaks": "Peaks and ray counts",
+        "effects": "Effects and cures",
         "writing": "Writing",
     }
 

@@ -14,14 +14,16 @@ import numpy as np
 
 from causticload.errors import InputError
 from causticload.hazard.exceed import CriterionMap, Exceedance, merge_exceedance
-from causticload.hazard.findings import Episode
+from causticload.hazard.findings import Episode, Finding, Season
+from causticload.hazard.further import SurfaceHistory, look_further
+from causticload.hazard.observers import EyePoints, EyeWatch, merge_eyes, place_eyes
 from causticload.hazard.peaks import SunState, look_closely
 from causticload.hazard.seasons import make_seasons
 from causticload.light.bvh import Engine
 from causticload.light.count import RayCount, count_spot
 from causticload.light.field import solve_field
 from causticload.light.prepare import LitScene, prepare
-from causticload.light.tally import direct_factor, merge_loads
+from causticload.light.tally import Accumulator, direct_factor, merge_loads
 from causticload.light.year import DayResult, run_day, run_days
 from causticload.optics.resolve import resolve_finish
 from causticload.output.assemble import day_rows, points_by_surface, receiver_years, summarise
@@ -89,9 +91,6 @@ def open_project(study: Study, *, engine: Engine = "auto") -> Project:
         engine=engine,
     )
     said = [*scene.assumed, *sky.assumed]
-    if study.observers:
-        names = ", ".join(o.name for o in study.observers)
-        said.append(f"Observers ({names}) are read but eyes are not assessed by this version.")
     for surface, finish in zip(_reflecting(scene), finishes, strict=True):
         said += [f"{surface.name}: {text}" for text in finish.assumed]
     return Project(study, scene, lit, sky, tuple(dict.fromkeys(said)))
@@ -419,7 +418,8 @@ def solve_year(
     report = progress or (lambda stage, done, total: None)
     plan = plan_year(study.site, study.year, project.sky)
     criteria = CriterionMap(lit, study.criteria)
-    days = _run_plan(project, plan, criteria, report, client, threads, store, stop)
+    eyes = place_eyes(study.observers, origin=project.scene.origin)
+    days = _run_plan(project, plan, criteria, eyes, report, client, threads, store, stop)
     loads = merge_loads([d.kept["load"] for d in days])
     over = merge_exceedance([d.kept["exceedance"] for d in days], points=len(lit.point_areas))
     episodes, seasons = make_seasons(
@@ -427,6 +427,7 @@ def solve_year(
     )
     reported = [s.worst for s in seasons[:checks]]
     episodes = _check_peaks(project, episodes, reported, report, threads, stop)
+    findings, histories = _look_further(project, plan, episodes, seasons, report, threads, stop)
     contribution = np.zeros(len(project.scene.panels))
     for c in next((e.contributors for e in episodes if e.contributors), ()):
         contribution[c.panel] = c.load
@@ -439,6 +440,16 @@ def solve_year(
         contribution=contribution,
         scene=project.scene,
         days=day_rows(project.scene, plan, days),
+        findings=findings,
+        histories=histories,
+        observers=merge_eyes(
+            [d.kept["eyes"] for d in days],
+            plan,
+            study.observers,
+            points=np.bincount(eyes.observer, minlength=len(study.observers)).tolist(),
+            zone=study.site.timezone,
+            day_stride=study.year.day_stride,
+        ),
     )
     seconds = clock.perf_counter() - started
     year.summary = summarise(
@@ -451,6 +462,7 @@ def _run_plan(
     project: Project,
     plan: Sequence[DayPlan],
     criteria: CriterionMap,
+    eyes: EyePoints,
     report: Progress,
     client: Any,
     threads: int | None,
@@ -468,7 +480,7 @@ def _run_plan(
     left = [d for d in plan if d.index not in results]
 
     def work(day: DayPlan) -> DayResult | None:
-        return run_day(lit, day, lambda lit, day: [Exceedance(lit, day, criteria)], stop.is_set)
+        return run_day(lit, day, lambda lit, day: _watch(lit, day, criteria, eyes), stop.is_set)
 
     if client is not None:
         done = _on_cluster(client, project.study, left)
@@ -482,6 +494,13 @@ def _run_plan(
     if stop.is_set():
         raise Stopped
     return [results[d.index] for d in plan]
+
+
+def _watch(
+    lit: LitScene, day: DayPlan, criteria: CriterionMap, eyes: EyePoints
+) -> list[Accumulator]:
+    """What is kept of a day beside its loads."""
+    return [Exceedance(lit, day, criteria), EyeWatch(lit, day, eyes)]
 
 
 def _on_cluster(client: Any, study: Study, days: Sequence[DayPlan]) -> Any:
@@ -506,7 +525,8 @@ def _cluster_day(study: Study, day: DayPlan) -> DayResult | None:
             project = open_project(study)
             _OPEN[key] = (project, CriterionMap(project.lit, study.criteria))
         project, criteria = _OPEN[key]
-    return run_day(project.lit, day, lambda lit, day: [Exceedance(lit, day, criteria)])
+    eyes = place_eyes(study.observers, origin=project.scene.origin)
+    return run_day(project.lit, day, lambda lit, day: _watch(lit, day, criteria, eyes))
 
 
 def _check_peaks(
@@ -542,6 +562,61 @@ def _check_peaks(
     if stop.is_set():
         raise Stopped
     return [by_number[e.number] for e in episodes]
+
+
+def _look_further(
+    project: Project,
+    plan: Sequence[DayPlan],
+    episodes: Sequence[Episode],
+    seasons: Sequence[Season],
+    report: Progress,
+    threads: int | None,
+    stop: threading.Event,
+) -> tuple[dict[int, Finding], dict[int, SurfaceHistory]]:
+    """Say what each counted peak does, what would cure it, and how sure that is."""
+    from concurrent.futures import ThreadPoolExecutor
+
+    by_number = {e.number: e for e in episodes}
+    sunlit = {
+        d: (day.times[i][0], day.times[i][-1]) for day in plan for i, d in enumerate(day.dates)
+    }
+    share = max((c.share for c in check_tessellation(project.scene)), default=0.0)
+    chosen = [s for s in seasons if by_number[s.worst].check is not None]
+    report("effects", 0, len(chosen))
+
+    def work(season: Season) -> tuple[int, Finding, SurfaceHistory] | None:
+        if stop.is_set():
+            return None
+        episode = by_number[season.worst]
+        finding, history = look_further(
+            project.lit,
+            season,
+            episode,
+            daylight=sunlit[episode.day],
+            sun_at=lambda t: _sun_at(project, t),
+            air_at=lambda times: _air_at(project, times),
+            tessellation_share=share,
+            weather=project.study.sky.source == "weather",
+        )
+        return season.number, finding, history
+
+    findings: dict[int, Finding] = {}
+    histories: dict[int, SurfaceHistory] = {}
+    with ThreadPoolExecutor(threads or os.cpu_count() or 1) as pool:
+        for done, found in enumerate(pool.map(work, chosen), start=1):
+            if found is not None:
+                number, finding, history = found
+                findings[number], histories[number] = finding, history
+            report("effects", done, len(chosen))
+    if stop.is_set():
+        raise Stopped
+    return findings, histories
+
+
+def _air_at(project: Project, times: Any) -> tuple[Floats, Floats]:
+    """Air temperature and wind of a study's sky at times (UTC)."""
+    states = project.sky.at(times)
+    return states.temperature_c, states.wind_ms
 
 
 def inspect(study: Study | Project) -> dict[str, Any]:

@@ -122,7 +122,7 @@ def _season(group: Sequence[Episode], tz: ZoneInfo, day_stride: int) -> Season:
         criterion=worst.criterion,
         protects=worst.protects,
         receiver=worst.receiver,
-        spans=_spans(sorted((d, each[0].days) for d, each in by_day.items()), day_stride),
+        spans=day_spans(sorted((d, each[0].days) for d, each in by_day.items()), day_stride),
         days=float(sum(each[0].days for each in by_day.values())),
         clock=(min(starts), max(ends)),
         minutes_per_day=float(max(minutes.values())),
@@ -147,8 +147,21 @@ def _minutes(time: np.datetime64) -> float:
     return float(time.astype("datetime64[ms]").astype(np.int64)) / 60_000.0
 
 
-def _spans(days: Sequence[tuple[date, float]], day_stride: int) -> tuple[tuple[date, date], ...]:
-    """Runs of days: each representative day stands for days on either side of it."""
+def day_spans(days: Sequence[tuple[date, float]], day_stride: int) -> tuple[tuple[date, date], ...]:
+    """Gather days into runs: each representative day stands for days on either side of it.
+
+    Parameters
+    ----------
+    days : sequence of (date, float)
+        Representative days in order, and the calendar days that each stands for.
+    day_stride : int
+        Days from one representative day to the next.
+
+    Returns
+    -------
+    spans : tuple of (date, date)
+        First and last day of each run.
+    """
     spans: list[tuple[date, date]] = []
     for day, weight in days:
         half = timedelta(days=int((weight - 1.0) // 2))
@@ -158,6 +171,28 @@ def _spans(days: Sequence[tuple[date, float]], day_stride: int) -> tuple[tuple[d
         else:
             spans.append((first, last))
     return tuple(spans)
+
+
+def clock_span(spans: Sequence[np.ndarray], zone: str) -> tuple[str, str] | None:
+    """Tell between which clock times something happens.
+
+    Parameters
+    ----------
+    spans : sequence of (2,) int
+        First and last second of each day, since 1970 UTC.
+    zone : str
+        IANA time zone.
+
+    Returns
+    -------
+    clock : (str, str) or None
+        Earliest and latest local clock time, "HH:MM"; None for no days.
+    """
+    if not len(spans):
+        return None
+    tz = ZoneInfo(zone)
+    ends = [[_clock(np.datetime64(int(t), "s"), tz) for t in span] for span in spans]
+    return min(a for a, _ in ends), max(b for _, b in ends)
 
 
 def _clock(time: np.datetime64, tz: ZoneInfo) -> str:

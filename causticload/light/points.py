@@ -15,7 +15,7 @@ from typing import NamedTuple
 import numpy as np
 from numba import njit
 
-from causticload.light.field import Bounced, halve_generation
+from causticload.light.field import LINEAR, Bounced, halve_generation
 from causticload.light.field import Generation as _Generation
 from causticload.light.overlap import flux_density
 from causticload.light.prepare import LitScene
@@ -107,12 +107,37 @@ def _approach(B, before, C, radius, reach, ring, near, error, edge):
 
 
 @njit(cache=True, nogil=True, error_model="numpy")
+def _spread(start, direction, chief, frame):
+    """Bound the three rays: ``size`` about the chief ray at its start, ``slope`` more a metre.
+
+    Returns the farthest start along the chief ray too.
+    """
+    size = slope = lag = 0.0
+    for j in range(3):
+        w = x = y = dw = dx = dy = 0.0
+        for i in range(3):
+            offset, d = start[j, i] - chief[i], direction[j, i]
+            w += offset * frame[0, i]
+            x += offset * frame[1, i]
+            y += offset * frame[2, i]
+            dw += d * frame[0, i]
+            dx += d * frame[1, i]
+            dy += d * frame[2, i]
+        slope = max(slope, math.hypot(dx, dy) / dw)
+        size = max(size, math.hypot(x - w * dx / dw, y - w * dy / dw))
+        lag = max(lag, abs(w))
+    return size, slope, lag
+
+
+@njit(cache=True, nogil=True, error_model="numpy")
 def _gather(B, factor, radii, weights, ring, P, N, tube, point, load, weight, whole):
     """Write every contribution of a beam to a point; without room, count the pairs at most."""
     q, w, W = np.empty((3, 2)), np.empty(3), np.empty(5)
     found = 0
     for k in range(factor.size):
         f, r = B.frame[k], radii[ring[k]]
+        size, slope, lag = _spread(B.start[k, :3], B.direction[k, :3], B.chief[k], f)
+        longest = max(B.before[k, 0], B.before[k, 1], B.before[k, 2]) + lag
         for p in range(len(P)):
             z = x = y = 0.0
             for i in range(3):
@@ -124,6 +149,9 @@ def _gather(B, factor, radii, weights, ring, P, N, tube, point, load, weight, wh
             if N[p, 0] == 0.0 and N[p, 1] == 0.0 and N[p, 2] == 0.0:
                 cos_g = 1.0  # an eye looks at the light
             if z <= 0.0 or cos_g <= 0.0:
+                continue
+            # Most points are far from most beams.
+            if math.hypot(x, y) > size + z * slope + r[-1] * (z + longest):
                 continue
             _section(B.start[k, :3], B.direction[k, :3], B.chief[k], f, z, q)
             path_plane(B, k, q, W)
@@ -169,6 +197,7 @@ def solve_points(
     points: Floats,
     normals: Floats | None = None,
     bounced: list[Bounced] | None = None,
+    quick: bool = False,
 ) -> PointLight:
     """Find the reflected light at points.
 
@@ -187,6 +216,8 @@ def solve_points(
         own across it, as on an eye that turns to it.
     bounced : list of Bounced, optional
         Beams after a second reflection, from :func:`causticload.light.field.solve_field`.
+    quick : bool
+        Refine tubes no further than for grids: to tell what is in view, not to read off a peak.
 
     Returns
     -------
@@ -196,8 +227,8 @@ def solve_points(
     P = np.ascontiguousarray(points, dtype=np.float64).reshape(-1, 3)
     N = np.zeros_like(P) if normals is None else np.ascontiguousarray(normals, dtype=np.float64)
     s = np.ascontiguousarray(sun_direction, dtype=np.float64)
-    radii, weights = lit.rings(sun_radius, FINE_RINGS)
-    ask = _Question(lit, s, radii, weights, P, N)
+    radii, weights = lit.rings(sun_radius, None if quick else FINE_RINGS)
+    ask = _Question(lit, s, radii, weights, P, N, fine=LINEAR if quick else FINE)
     found = [ask.direct()]
     found += [ask.second(b) for b in bounced or [] if len(b.sheet)]
     parts = Parts(*(np.concatenate(a) for a in zip(*found, strict=True)))
@@ -223,9 +254,18 @@ class _Question:
     """Points that ask under one sun."""
 
     def __init__(
-        self, lit: LitScene, s: Floats, radii: Floats, weights: Floats, P: Floats, N: Floats
+        self,
+        lit: LitScene,
+        s: Floats,
+        radii: Floats,
+        weights: Floats,
+        P: Floats,
+        N: Floats,
+        *,
+        fine: float,
     ) -> None:
         self.lit, self.s, self.radii, self.weights = lit, s, radii, weights
+        self.fine = fine
         self.P, self.N = P, N
         self.reach = np.ascontiguousarray(radii[:, -1])
         self.middle = 0.5 * (P.min(axis=0) + P.max(axis=0))
@@ -250,7 +290,7 @@ class _Question:
             beams, outcome = light_tubes(lit.F, lit.R, work.tubes, sun_direction=self.s)
             near, error, edge = self._approach(beams, work.tubes.sheet)
             near &= outcome == LIT
-            fine = (error <= FINE) | (work.age >= MOST_HALVINGS)
+            fine = (error <= self.fine) | (work.age >= MOST_HALVINGS)
             tubes.append(work.tubes.take(near & fine))
             rest = near & ~fine
             work = halve_generation(work.take(rest), edge[rest])

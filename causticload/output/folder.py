@@ -3,6 +3,7 @@
 from __future__ import annotations
 
 import json
+from collections.abc import Callable
 from importlib.metadata import PackageNotFoundError, version
 from pathlib import Path
 from typing import Any
@@ -11,11 +12,19 @@ import numpy as np
 import pyvista as pv
 
 from causticload.errors import CausticloadError, ResultError
+from causticload.hazard.further import SurfaceHistory
+from causticload.hazard.histories import History
 from causticload.output import meshes, pictures, tables
 from causticload.output.colours import round_end
 from causticload.output.days import DayStore
 from causticload.output.files import to_json, working_in, write_text, write_whole
-from causticload.output.records import to_episode, to_record, to_season
+from causticload.output.records import (
+    to_episode,
+    to_finding,
+    to_observer,
+    to_record,
+    to_season,
+)
 from causticload.output.results import ReceiverYear, Year
 from causticload.scene.model import Bools, Floats, Scene
 from causticload.study import input_hashes, read_study, write_study
@@ -80,6 +89,7 @@ def save_year(year: Year, path: Path) -> Path:
     pictures.year_pictures(year, path / "figures")
     _save_chart_rows(year, path)
     _save_panels(scene, path)
+    _save_histories(year, path)
     write_study(year.study, path / "study.toml")
     write_text(path / "summary.json", to_json(_full_summary(year)))
     return path
@@ -187,6 +197,48 @@ def _save_chart_rows(year: Year, path: Path) -> None:
     write_whole(path / "chart.npz", write)
 
 
+def _save_histories(year: Year, path: Path) -> None:
+    """Loads and temperatures at the worst peak of each season looked at closely."""
+    numbers = sorted(year.histories)
+    each = [year.histories[n] for n in numbers]
+    arrays: dict[str, Any] = {
+        "season": np.array(numbers, dtype=np.int32),
+        "start": np.cumsum([0, *(len(h.surface_c) for h in each)]),
+    }
+    columns: dict[str, Callable[[SurfaceHistory], Any]] = {
+        "time": lambda h: h.loads.time,
+        "reflected": lambda h: h.loads.reflected,
+        "direct": lambda h: h.loads.direct,
+        "diffuse": lambda h: h.loads.diffuse,
+        "air_c": lambda h: h.loads.air_c,
+        "wind_ms": lambda h: h.loads.wind,
+        "surface_c": lambda h: h.surface_c,
+        "without_c": lambda h: h.without_c,
+    }
+    for key, pick in columns.items():
+        arrays[key] = np.concatenate([pick(h) for h in each] or [np.zeros(0)])
+
+    def write(target: Path) -> None:
+        with target.open("wb") as file:
+            np.savez_compressed(file, **arrays)
+
+    write_whole(path / "histories.npz", write)
+
+
+def _read_histories(folder: Path) -> dict[int, SurfaceHistory]:
+    with np.load(folder / "histories.npz") as file:
+        found = {}
+        for k, number in enumerate(file["season"]):
+            part = slice(int(file["start"][k]), int(file["start"][k + 1]))
+            loads = ("time", "reflected", "direct", "diffuse", "air_c", "wind_ms")
+            found[int(number)] = SurfaceHistory(
+                History(*(file[key][part] for key in loads)),
+                file["surface_c"][part],
+                file["without_c"][part],
+            )
+        return found
+
+
 def _save_panels(scene: Scene, path: Path) -> None:
     """Panels' places and sizes, for tables and elevations."""
     p = scene.panels
@@ -213,6 +265,8 @@ def _full_summary(year: Year) -> dict[str, Any]:
         **year.summary,
         "inputs_sha256": input_hashes(year.study),
         "libraries": {name: _version(name) for name in LIBRARIES},
+        "observers": to_record(year.observers),
+        "findings": [to_record(year.findings[n]) for n in sorted(year.findings)],
         "seasons": to_record(year.seasons),
         "episodes": to_record(year.episodes),
     }
@@ -277,11 +331,13 @@ def read_year(path: str | Path) -> Year:
 
 
 def _rebuild(folder: Path, summary: dict[str, Any]) -> Year:
-    for name in ("receivers.vtp", "facade.vtp", "chart.npz", "study.toml"):
+    for name in ("receivers.vtp", "facade.vtp", "chart.npz", "histories.npz", "study.toml"):
         if not (folder / name).is_file():
             raise ResultError(f"{name} is missing", where=str(folder), hint="Run the year again.")
     episodes = [to_episode(r) for r in summary.pop("episodes")]
     seasons = [to_season(r) for r in summary.pop("seasons")]
+    findings = {r["season"]: to_finding(r) for r in summary.pop("findings")}
+    observers = [to_observer(r) for r in summary.pop("observers")]
     facade = pv.read(folder / "facade.vtp")
     panel = np.asarray(facade.cell_data["panel [number]"])
     load = np.asarray(facade.cell_data["contribution to the worst peak [W/m2]"])
@@ -295,6 +351,9 @@ def _rebuild(folder: Path, summary: dict[str, Any]) -> Year:
         summary=summary,
         contribution=contribution,
         days=_read_chart_rows(folder),
+        findings=findings,
+        histories=_read_histories(folder),
+        observers=observers,
     )
 
 

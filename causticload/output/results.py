@@ -9,7 +9,8 @@ from typing import Any
 import numpy as np
 from numpy.typing import NDArray
 
-from causticload.hazard.findings import Episode, Season
+from causticload.hazard.findings import Episode, Finding, ObserverFinding, Season
+from causticload.hazard.further import SurfaceHistory
 from causticload.scene.model import Floats, Ints, Scene
 from causticload.study.model import Study
 
@@ -95,6 +96,9 @@ class Year:
     seasons: list[Season]  # worst first
     summary: dict[str, Any]  # what summary.json holds
     contribution: Floats  # (panels,) W/m² at the worst episode's peak
+    findings: dict[int, Finding] = field(default_factory=dict)  # by number of the season
+    histories: dict[int, SurfaceHistory] = field(default_factory=dict)  # by number of the season
+    observers: list[ObserverFinding] = field(default_factory=list)
     scene: Scene | None = None  # None when read from a folder without its meshes
     days: list[dict[str, Any]] = field(default_factory=list)
     # one row per day and date: date, worst load per receiver by time, for charts

@@ -9,7 +9,8 @@ from typing import Any
 import numpy as np
 
 from causticload.hazard.cautions import cautions_for
-from causticload.hazard.findings import Episode, PeakCheck, Season
+from causticload.hazard.eyes import EYE_CLASS_WORDS, EyeClass
+from causticload.hazard.findings import Episode, Finding, ObserverFinding, PeakCheck, Season
 from causticload.output import words
 from causticload.output.results import Instant, Year
 
@@ -62,8 +63,15 @@ def summarise_year(year: Year) -> str:
     by_number = {e.number: e for e in year.episodes}
     for season in year.seasons[:MOST_SEASONS]:
         lines += ["", *describe_season(season, by_number[season.worst], zone)]
+        lines += [
+            _wrap(text, "   ") for text in finding_sentences(year.findings.get(season.number))
+        ]
     if len(year.seasons) > MOST_SEASONS:
         lines += ["", f"  and {len(year.seasons) - MOST_SEASONS} more; see episodes.csv."]
+    if year.observers:
+        lines += ["", "Observers"]
+        for observer in year.observers:
+            lines += [_wrap(text, "  ") for text in observer_sentences(observer, zone)]
     lines += ["", "Largest reflected load on each receiver"]
     width = max([len(r["name"]) for r in s["receivers"]], default=0)
     for r in sorted(s["receivers"], key=lambda r: -r["peak_reflected_W_m2"]):
@@ -126,6 +134,81 @@ def describe_season(season: Season, worst: Episode, zone: str) -> list[str]:
             )
         )
     return lines
+
+
+def finding_sentences(finding: Finding | None) -> list[str]:
+    """Say what a season's worst peak does, what would cure it, and how sure that is.
+
+    Parameters
+    ----------
+    finding : Finding or None
+        None: the season was not looked at closely.
+
+    Returns
+    -------
+    sentences : list of str
+        One paragraph each.
+    """
+    if finding is None:
+        return ["Not looked at closely: the peak is the grid's own and was not counted."]
+    said = [finding.skin.text] if finding.skin else []
+    if finding.surface:
+        said.append(finding.surface.text)
+    said.append(finding.least_panels.text)
+    confidence = finding.confidence
+    return [*said, f"Confidence: {confidence.grade}. {' '.join(confidence.reasons)}"]
+
+
+def observer_sentences(observer: ObserverFinding, zone: str) -> list[str]:
+    """Say what an observer meets in the year.
+
+    Parameters
+    ----------
+    observer : ObserverFinding
+        The observer.
+    zone : str
+        IANA time zone.
+
+    Returns
+    -------
+    sentences : list of str
+        One paragraph each, the first with the observer's name.
+    """
+    sight = observer.worst
+    if sight is None:
+        return [f"{observer.name}: no image of the sun came into view under these assumptions."]
+    said = []
+    if observer.clock and observer.worst_day:
+        runs = words.runs(observer.spans, observer.after_image_days)
+        said.append(
+            f"{observer.name}: a look can leave an after-image on about "
+            f"{observer.after_image_days:.0f} days ({runs}), between {observer.clock[0]} and "
+            f"{observer.clock[1]} local clock time, for up to "
+            f"{words.length(observer.after_image_most)} a day "
+            f"({words.day(observer.worst_day)}) and {words.length(observer.after_image_minutes)} in "
+            f"the year, somewhere on its path."
+        )
+    else:
+        said.append(f"{observer.name}: no look leaves an after-image under these assumptions.")
+    said.append(
+        f"Worst at {words.place(sight.place)} on {words.moment(sight.time, zone)}: {sight.images} "
+        f"bright area{'s' if sight.images != 1 else ''}, the worst {sight.subtense_mrad:.1f} mrad "
+        f"across and {sight.angle_deg:.0f}° from the line of sight; {words.load(sight.corneal)} at "
+        f"the eye; {EYE_CLASS_WORDS[EyeClass(sight.eye_class)]}. Veil {sight.veil:,.0f} cd/m² at "
+        f"the age of {observer.age:.0f}, which leaves {100 * sight.contrast_left:.0f} % of the "
+        f"contrast of a sunlit street."
+    )
+    if observer.burn_minutes > 0.0:
+        said.append(
+            f"For {words.length(observer.burn_minutes)} in the year a look can burn the retina "
+            f"before a person blinks."
+        )
+    if observer.rogue_minutes > 0.0:
+        said.append(
+            f"Over 500 cd/m² by 10 E/theta² for {words.length(observer.rogue_minutes)} in the year "
+            f"(Hassall 1991, from memory)."
+        )
+    return said
 
 
 def _is_total(episode: Episode) -> bool:

@@ -31,6 +31,7 @@ class Surface:
     figure: str | None = None
     spacing: float = 0.0  # m, receivers only; 0: chosen by the charts
     kind: str = ""  # receivers only
+    material: str = ""  # receivers only; empty: the usual one of its kind
     triangles: int = 0
     assumed: tuple[str, ...] = ()  # sentences on what was assumed for this surface
 

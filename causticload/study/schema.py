@@ -123,6 +123,7 @@ SURFACE = {
     "figure": Key(TEXT, "name of a surface figure", _not_empty),
     "spacing": Key(NUMBER, "sample distance, metres", between(0, 1000, open_low=True)),
     "kind": Key(TEXT, "what it is, for its default criteria", _not_empty),
+    "material": Key(TEXT, "what a receiver is made of, for its temperature", _not_empty),
 }
 FINISH = {
     "solar_reflectance": Key(NUMBER, "at normal incidence, outdoor side", _SHARE),
