@@ -184,8 +184,8 @@ def observer_sentences(observer: ObserverFinding, zone: str) -> list[str]:
             f"{observer.name}: a look can leave an after-image on about "
             f"{observer.after_image_days:.0f} days ({runs}), between {observer.clock[0]} and "
             f"{observer.clock[1]} local clock time, for up to "
-            f"{words.length(observer.after_image_most)} a day "
-            f"({words.day(observer.worst_day)}) and {words.length(observer.after_image_minutes)} in "
+            f"{words.length(observer.after_image_most)} a day ({words.day(observer.worst_day)}) "
+            f"and {words.length(observer.after_image_minutes)} in "
             f"the year, somewhere on its path."
         )
     else:
