@@ -51,12 +51,20 @@ def emit(corner, normal, running, s, e1, e2, tan_radius, rng, start, direction):
         root, split = math.sqrt(rng.random()), rng.random()
         a, b, c = 1.0 - root, root * (1.0 - split), root * split
         r, turn = tan_radius * math.sqrt(rng.random()), 2.0 * math.pi * rng.random()
-        sun = s + r * math.cos(turn) * e1 + r * math.sin(turn) * e2
-        n = a * normal[m, 0] + b * normal[m, 1] + c * normal[m, 2]
-        sun /= math.sqrt(np.sum(sun**2))
-        n /= math.sqrt(np.sum(n**2))
-        direction[k] = 2.0 * np.sum(n * sun) * n - sun
-        start[k] = a * corner[m, 0] + b * corner[m, 1] + c * corner[m, 2] + 1e-3 * direction[k]
+        p, q = r * math.cos(turn), r * math.sin(turn)
+        # scalars, not small arrays: those would make counting look slower than it is
+        n2 = n_sun = 0.0
+        for i in range(3):
+            n = a * normal[m, 0, i] + b * normal[m, 1, i] + c * normal[m, 2, i]
+            n_sun += n * (s[i] + p * e1[i] + q * e2[i])
+            n2 += n * n
+        scale = 1.0 / math.sqrt(1.0 + p * p + q * q)
+        for i in range(3):
+            n = a * normal[m, 0, i] + b * normal[m, 1, i] + c * normal[m, 2, i]
+            sun = s[i] + p * e1[i] + q * e2[i]
+            direction[k, i] = (2.0 * n_sun / n2 * n - sun) * scale
+            start[k, i] = a * corner[m, 0, i] + b * corner[m, 1, i] + c * corner[m, 2, i]
+            start[k, i] += 1e-3 * direction[k, i]
 
 
 @njit(nogil=True, error_model="numpy")
