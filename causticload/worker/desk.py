@@ -326,6 +326,7 @@ class Desk:
     def _yearly(
         self, project: Project, year: Year, key: str, folder: Path | None
     ) -> dict[str, Any]:
+        from causticload.output.text import observer_sentences
         from causticload.worker import listing
 
         return {
@@ -336,6 +337,9 @@ class Desk:
             "seasons": [listing.season_row(s, year) for s in year.seasons],
             "episodes": [listing.episode_row(e, year) for e in year.episodes[:MOST_EPISODES]],
             "episodes_found": len(year.episodes),
+            "observers": [
+                observer_sentences(o, project.study.site.timezone) for o in year.observers
+            ],
             **self._painted(project, year, "peak", ""),
         }
 
