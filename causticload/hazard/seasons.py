@@ -13,9 +13,12 @@ from scipy.sparse.csgraph import connected_components
 
 from causticload.hazard.findings import Episode, Season
 
-# Two episodes on neighbouring days are the same thing if their peaks are no further apart.
+# Two episodes on neighbouring days are the same thing if their peaks are no further apart...
 SAME_PLACE_M = 15.0
 SAME_HOUR_MIN = 45.0
+# ...or if for this share of the shorter one they are on at the same hour and mostly that near: on a
+# caustic that lasts for hours the moment of the peak jumps about.
+SAME_SHARE = 0.5
 
 
 def severity(item: Episode | Season) -> tuple[float, ...]:
@@ -91,14 +94,37 @@ def _labels(episodes: Sequence[Episode], day_stride: int) -> np.ndarray:
         near &= np.minimum(gap, 1440.0 - gap) <= SAME_HOUR_MIN
         # Neighbouring representative days, or a day and its mirror day.
         beside = np.abs(day[:, None] - day[None]) <= day_stride + 1
-        near &= beside | (day[:, None] == mirror[None])
-        a, b = np.nonzero(near)
-        heads += [members[i] for i in a]
-        tails += [members[i] for i in b]
+        beside |= day[:, None] == mirror[None]
+        tracks = [_track(episodes[i]) for i in members]
+        for a, b in zip(*np.nonzero(np.triu(beside, 1)), strict=True):
+            if near[a, b] or _run_together(tracks[a], tracks[b]):
+                heads.append(members[a])
+                tails.append(members[b])
     graph = sparse.coo_matrix(
         (np.ones(len(heads)), (np.array(heads, int), np.array(tails, int))), shape=(n, n)
     )
     return connected_components(graph, directed=False)[1] if n else np.zeros(0, int)
+
+
+def _track(episode: Episode) -> tuple[np.ndarray, np.ndarray]:
+    """Minutes of the day (n,), rising, and places (n, 3) of an episode's path."""
+    minute = np.array([_minute_of_day(s.time) for s in episode.path])
+    minute += 1440.0 * (minute < minute[0])  # over midnight in UTC
+    return minute, np.array([s.place for s in episode.path])
+
+
+def _run_together(
+    first: tuple[np.ndarray, np.ndarray], second: tuple[np.ndarray, np.ndarray]
+) -> bool:
+    """Whether two paths are on at the same hours and mostly near each other then."""
+    (t1, x1), (t2, x2) = first, second
+    low, high = max(t1[0], t2[0]), min(t1[-1], t2[-1])
+    shorter = min(t1[-1] - t1[0], t2[-1] - t2[0])
+    if high <= low or high - low < SAME_SHARE * shorter:
+        return False
+    t = np.linspace(low, high, 9)
+    apart = [np.interp(t, t1, x1[:, k]) - np.interp(t, t2, x2[:, k]) for k in range(3)]
+    return bool(np.median(np.linalg.norm(apart, axis=0)) <= SAME_PLACE_M)
 
 
 def _minute_of_day(time: np.datetime64) -> float:
