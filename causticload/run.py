@@ -88,7 +88,7 @@ def open_project(study: Study, *, engine: Engine = "auto") -> Project:
         disc=sky.disc,
         engine=engine,
     )
-    said = [*scene.assumed, *sky.assumed]
+    said = [*scene.assumed, *lit.assumed, *sky.assumed]
     if study.observers:
         names = ", ".join(o.name for o in study.observers)
         said.append(f"Observers ({names}) are read but eyes are not assessed by this version.")

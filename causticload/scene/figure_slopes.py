@@ -84,3 +84,36 @@ def curvature_at_top(figures: PaneFigures, *, waves: bool = False) -> Floats:
         kx, ky = g.wave_number.T
         out += g.wave[:, None] * np.stack([kx * kx, kx * ky, ky * ky], axis=1)
     return out
+
+
+def steepest_of_panels(figures: PaneFigures) -> Floats:
+    """Steepest slope of any pane of each panel, never too little.
+
+    Parameters
+    ----------
+    figures : PaneFigures
+        The panes.
+
+    Returns
+    -------
+    slope : (p,) float
+        0 where there is no figure. [1]
+    """
+    g = figures
+    steep = np.zeros(len(g.panel))
+    line = np.linspace(-1.0, 1.0, 41)
+    x, y = np.meshgrid(line, line, indexing="ij")
+    for shape in np.unique(g.shape[g.shape >= 0]):
+        c, mine = g.shapes[shape], g.shape == shape
+        value = polynomial.polyval2d(x, y, c)
+        # Outside the outline the polynomial is negative near the edges, and means nothing.
+        inside = (value > -0.02) & (value < 1.02)
+        for a in range(2):
+            most = np.abs(polynomial.polyval2d(x, y, polynomial.polyder(c, axis=a)))[inside].max()
+            steep[mine] += np.abs(g.bow[mine]) * most / g.half[g.panel[mine], a]
+    steep += g.wave * np.linalg.norm(g.wave_number, axis=1) + np.abs(g.tilt).sum(axis=1)
+    steep += 2.0 * g.kinked.shape[1] * np.abs(g.kink) / g.kink_width
+    out = np.zeros(len(g.first))
+    # A net sees the steepest place to a per cent; the sum of both ways is far above its norm.
+    np.maximum.at(out, g.panel, 1.05 * steep)
+    return out

@@ -70,6 +70,7 @@ class PaneFigures:
     wave: Floats  # (g,) m, half of peak to valley
     wave_number: Floats  # (g, 2) rad/m along width and height
     phase: Floats  # (g,) rad
+    follow: Ints  # (g,) 1: follow the wave, 0: take its mean over phases, -1: by cost
     tilt: Floats  # (g, 2) slope along width and height
     kink: Floats  # (g,) m, lift at the rim of the edges in kinked
     kink_width: Floats  # (g,) m

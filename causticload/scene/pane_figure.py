@@ -130,6 +130,7 @@ def figure_panes(
             wave=column("wave"),
             wave_number=column("wave_number"),
             phase=column("phase"),
+            follow=column("follow", np.int32),
             tilt=column("tilt"),
             kink=column("kink"),
             kink_width=column("kink_width"),
@@ -197,6 +198,7 @@ class _Maker:
         self.plain = {
             "wave": 0.5e-3 * float(s.get("roller_wave_mm", 0.0)),
             "wave_number": 2.0 * np.pi / pitch * along,
+            "follow": {"waves": 1, "mean": 0}.get(s.get("roller_as", ""), -1),
             "kink": 1e-3 * float(s.get("edge_kink_mm", 0.0)),
             "kink_width": 1e-3 * float(s.get("edge_kink_width_mm", 1.0)),
         }
