@@ -90,7 +90,7 @@ def open_project(study: Study, *, engine: Engine = "auto") -> Project:
         disc=sky.disc,
         engine=engine,
     )
-    said = [*scene.assumed, *sky.assumed]
+    said = [*scene.assumed, *lit.assumed, *sky.assumed]
     for surface, finish in zip(_reflecting(scene), finishes, strict=True):
         said += [f"{surface.name}: {text}" for text in finish.assumed]
     return Project(study, scene, lit, sky, tuple(dict.fromkeys(said)))

@@ -15,6 +15,7 @@ from typing import NamedTuple
 import numpy as np
 from numba import njit
 
+from causticload.light.cut import wave_spans, wave_sway
 from causticload.light.field import LINEAR, Bounced, halve_generation
 from causticload.light.field import Generation as _Generation
 from causticload.light.overlap import flux_density
@@ -73,8 +74,11 @@ def _section(start, direction, chief, frame, z, q):
 
 
 @njit(cache=True, nogil=True, error_model="numpy")
-def _approach(B, before, C, radius, reach, ring, near, error, edge):
-    """Tell which beams pass within ``radius`` of ``C``, and how well three rays describe them."""
+def _approach(B, before, C, radius, reach, ring, sway, near, error, edge):
+    """Tell which beams pass within ``radius`` of ``C``, and how well three rays describe them.
+
+    Light may leave a beam by the angle ``sway`` of what its rays do not show.
+    """
     q, m, far = np.empty((3, 2)), np.empty((3, 2)), np.empty((3, 2))
     for k in range(near.size):
         f = B.frame[k]
@@ -101,7 +105,7 @@ def _approach(B, before, C, radius, reach, ring, near, error, edge):
             spread = max(spread, math.hypot(far[j, 0] - q[j, 0], far[j, 1] - q[j, 1]))
             size = max(size, math.hypot(q[j, 0] - mx, q[j, 1] - my))
         rho = reach[ring[k]] * (max(z, 0.0) + radius + before[k])
-        within = size + 2.0 * bulge + spread + rho + radius
+        within = size + 2.0 * bulge + spread + rho + radius + sway[k] * (max(z, 0.0) + radius)
         if math.hypot(x - mx, y - my) <= within:
             near[k], error[k] = True, worst / max(rho, FINE_FLOOR_M / FINE)
 
@@ -227,9 +231,9 @@ def solve_points(
     P = np.ascontiguousarray(points, dtype=np.float64).reshape(-1, 3)
     N = np.zeros_like(P) if normals is None else np.ascontiguousarray(normals, dtype=np.float64)
     s = np.ascontiguousarray(sun_direction, dtype=np.float64)
-    radii, weights = lit.rings(sun_radius, None if quick else FINE_RINGS)
-    ask = _Question(lit, s, radii, weights, P, N, fine=LINEAR if quick else FINE)
-    found = [ask.direct()]
+    near = lit if quick else lit.close
+    found = [_Question(near, s, sun_radius, P, N, quick=quick).direct()]
+    ask = _Question(lit, s, sun_radius, P, N, quick=quick)
     found += [ask.second(b) for b in bounced or [] if len(b.sheet)]
     parts = Parts(*(np.concatenate(a) for a in zip(*found, strict=True)))
     return PointLight(
@@ -254,28 +258,30 @@ class _Question:
     """Points that ask under one sun."""
 
     def __init__(
-        self,
-        lit: LitScene,
-        s: Floats,
-        radii: Floats,
-        weights: Floats,
-        P: Floats,
-        N: Floats,
-        *,
-        fine: float,
+        self, lit: LitScene, s: Floats, sun_radius: float, P: Floats, N: Floats, *, quick: bool
     ) -> None:
-        self.lit, self.s, self.radii, self.weights = lit, s, radii, weights
-        self.fine = fine
+        self.lit, self.s = lit, s
+        self.radii, self.weights = lit.rings(sun_radius, None if quick else FINE_RINGS)
+        self.fine = LINEAR if quick else FINE
         self.P, self.N = P, N
-        self.reach = np.ascontiguousarray(radii[:, -1])
+        self.reach = np.ascontiguousarray(self.radii[:, -1])
         self.middle = 0.5 * (P.min(axis=0) + P.max(axis=0))
         self.radius = float(np.linalg.norm(P - self.middle, axis=1).max())
 
-    def _approach(self, beams: Beams, ring: Ints) -> tuple[Bools, Floats, Ints]:
+    def _approach(self, beams: Beams, ring: Ints, sway: Floats) -> tuple[Bools, Floats, Ints]:
         n = len(ring)
         near, error, edge = np.empty(n, bool), np.empty(n), np.empty(n, np.int64)
         _approach(
-            beams, beams.longest, self.middle, self.radius, self.reach, ring, near, error, edge
+            beams,
+            beams.longest,
+            self.middle,
+            self.radius,
+            self.reach,
+            ring,
+            sway,
+            near,
+            error,
+            edge,
         )
         return near, error, edge
 
@@ -288,20 +294,24 @@ class _Question:
         tubes: list[Tubes] = []
         while len(work.age):
             beams, outcome = light_tubes(lit.F, lit.R, work.tubes, sun_direction=self.s)
-            near, error, edge = self._approach(beams, work.tubes.sheet)
-            near &= outcome == LIT
-            fine = (error <= self.fine) | (work.age >= MOST_HALVINGS)
+            sway = wave_sway(lit.F, work.tubes)
+            near, error, edge = self._approach(beams, work.tubes.sheet, sway)
+            # With a wave between its corners a tube may leave by another way than they do.
+            waves = sway > 0.0
+            near &= (outcome == LIT) | waves
+            edge[waves] = wave_spans(lit.F, work.tubes.take(waves)).argmax(axis=1)
+            fine = ((error <= self.fine) & ~waves) | (work.age >= MOST_HALVINGS)
             tubes.append(work.tubes.take(near & fine))
             rest = near & ~fine
             work = halve_generation(work.take(rest), edge[rest])
         ready = Tubes(*(np.concatenate(a) for a in zip(*tubes, strict=True)))
         beams, _ = light_tubes(lit.F, lit.R, ready, sun_direction=self.s)
         kept = 1.0 - lit.scatter[ready.sheet]
-        return self._gather(beams, None, ready, kept, ready.sheet)
+        return self._gather(beams, None, ready, kept, ready.sheet, lit.shows[ready.sheet])
 
     def second(self, bounced: Bounced) -> Parts:
         """Light by two reflections."""
-        near, _, _ = self._approach(bounced.beams, bounced.sheet)
+        near, _, _ = self._approach(bounced.beams, bounced.sheet, np.zeros(len(bounced.sheet)))
         tubes = bounced.tubes.take(near)
         kept = bounced.kept[near]
         return self._gather(
@@ -310,10 +320,17 @@ class _Question:
             tubes,
             kept,
             bounced.sheet[near],
+            bounced.shows[near],
         )
 
     def _gather(
-        self, beams: Beams, sources: Beams | None, tubes: Tubes, kept: Floats, ring: Ints
+        self,
+        beams: Beams,
+        sources: Beams | None,
+        tubes: Tubes,
+        kept: Floats,
+        ring: Ints,
+        shows: Bools,
     ) -> Parts:
         lit = self.lit
         factor = beams.solar * kept
@@ -348,6 +365,6 @@ class _Question:
             direction=way / length[:, None],
             reflectance=solar * kept[tube] / crossing[tube],
             distance=length + beams.longest[tube],
-            whole=whole,
+            whole=whole & shows[tube],
             second=np.full(len(tube), sources is not None),
         )

@@ -146,37 +146,6 @@ def halve(tubes: Tubes, edge: Ints) -> Tubes:
     )
 
 
-def cut_to_length(F: Facets, tubes: Tubes, *, longest_m: float) -> Tubes:
-    """Halve long edges until none is longer than a given length.
-
-    A tube's rays can only report what they meet: a lamp post between the corners of a 60 m bay
-    would go unseen.
-
-    Parameters
-    ----------
-    F : Facets
-        The scene's triangles.
-    tubes : Tubes
-        Any number of tubes.
-    longest_m : float
-        Longest edge that may remain, > 0. [m]
-
-    Returns
-    -------
-    tubes : Tubes
-        As many as it takes, in no particular order.
-    """
-    done: list[Tubes] = []
-    while len(tubes.facet):
-        corner = np.einsum("nij,njk->nik", tubes.bary, F.corner[tubes.facet])
-        length = np.linalg.norm(np.roll(corner, -1, axis=1) - corner, axis=2)
-        edge = np.argmax(length, axis=1)
-        long = length[np.arange(len(edge)), edge] > longest_m
-        done.append(tubes.take(~long))
-        tubes = halve(tubes.take(long), edge[long])
-    return Tubes(*(np.concatenate(a) for a in zip(*done, strict=True))) if done else tubes
-
-
 @njit(cache=True, nogil=True, error_model="numpy")
 def _frame_beam(start, direction, chief, frame):
     """Chief ray and frame of one beam from its corner rays."""
@@ -235,7 +204,7 @@ def _light_tubes(F, R, T, s, B, outcome):
                 v = 0.5 * (T.bary[k, a, 1] + T.bary[k, b, 1])
                 w = 0.5 * (T.bary[k, a, 2] + T.bary[k, b, 2])
             position_at(F, t, u, v, w, x)
-            normal_at(F, t, u, v, w, n)
+            normal_at(F, t, T.sheet[k], u, v, w, n)
             cos_n = side * (n[0] * s[0] + n[1] * s[1] + n[2] * s[2])
             if cos_n <= 0.0:
                 outcome[k] = TURNED_AWAY
@@ -251,7 +220,7 @@ def _light_tubes(F, R, T, s, B, outcome):
         u = (T.bary[k, 0, 0] + T.bary[k, 1, 0] + T.bary[k, 2, 0]) / 3.0
         v = (T.bary[k, 0, 1] + T.bary[k, 1, 1] + T.bary[k, 2, 1]) / 3.0
         w = (T.bary[k, 0, 2] + T.bary[k, 1, 2] + T.bary[k, 2, 2]) / 3.0
-        normal_at(F, t, u, v, w, n)
+        normal_at(F, t, T.sheet[k], u, v, w, n)
         cos_theta = min(1.0, abs(n[0] * s[0] + n[1] * s[1] + n[2] * s[2]))
         _s_axis(d, n, B.s_axis[k])
         B.before[k, :] = 0.0
