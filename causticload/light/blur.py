@@ -39,6 +39,7 @@ class Blur(NamedTuple):
     radii: Floats  # (s, r) tangents of the discs' angular radii, growing along a row
     weights: Floats  # (s, r) their shares of the light; a row adds up to 1
     reach: Floats  # (s,) tangent of the largest radius
+    variance: Floats  # (s,) of the light along an axis, over the largest radius squared
     edge: Floats  # (s, EDGE_CELLS + 1) light inwards of a line at distance -1 to 1
     mean: Floats  # (s, CELLS + 1, CELLS + 1) mean of k along an edge: distance h, end s
 
@@ -70,6 +71,7 @@ def make_blur(radii: Floats, weights: Floats) -> Blur:
         radii=radii,
         weights=weights,
         reach=radii[:, -1].copy(),
+        variance=(weights * (radii / radii[:, -1:]) ** 2).sum(axis=1) / 4.0,
         edge=np.stack([edge for edge, _ in tables]),
         mean=np.stack([mean for _, mean in tables]),
     )

@@ -52,7 +52,7 @@ from causticload.scene.model import Bools, Floats, Ints
 
 # A tube is small enough when it misplaces the middle of an image's edge by less than this share
 # of the radius of the sun's image...
-LINEAR = 0.15
+LINEAR = 0.12
 # ...or by less than this many metres, which no receiver cell or eye can tell.
 LINEAR_FLOOR_M = 0.002
 # A straddling tube with no more samples than this asks for each instead of being halved.
