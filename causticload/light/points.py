@@ -111,12 +111,37 @@ def _approach(B, before, C, radius, reach, ring, sway, near, error, edge):
 
 
 @njit(cache=True, nogil=True, error_model="numpy")
+def _corner_lines(start, direction, before, chief, frame, at, slope):
+    """Corner rays as lines over the depth: at + z slope, (3, 2) each; also the longest lag.
+
+    The lag is what a ray's path from its first reflection is longer than its depth.
+    """
+    most = -math.inf
+    for j in range(3):
+        w = x = y = dw = dx = dy = 0.0
+        for i in range(3):
+            offset, d = start[j, i] - chief[i], direction[j, i]
+            w += offset * frame[0, i]
+            x += offset * frame[1, i]
+            y += offset * frame[2, i]
+            dw += d * frame[0, i]
+            dx += d * frame[1, i]
+            dy += d * frame[2, i]
+        slope[j, 0], slope[j, 1] = dx / dw, dy / dw
+        at[j, 0], at[j, 1] = x - w * dx / dw, y - w * dy / dw
+        most = max(most, before[j] - w)
+    return most
+
+
+@njit(cache=True, nogil=True, error_model="numpy")
 def _gather(B, factor, radii, weights, ring, P, N, tube, point, load, weight, whole):
     """Write every contribution of a beam to a point; without room, count the pairs at most."""
     q, w, W = np.empty((3, 2)), np.empty(3), np.empty(5)
+    at, slope = np.empty((3, 2)), np.empty((3, 2))
     found = 0
     for k in range(factor.size):
         f, r = B.frame[k], radii[ring[k]]
+        lag = _corner_lines(B.start[k], B.direction[k], B.before[k], B.chief[k], f, at, slope)
         for p in range(len(P)):
             z = x = y = 0.0
             for i in range(3):
@@ -129,9 +154,9 @@ def _gather(B, factor, radii, weights, ring, P, N, tube, point, load, weight, wh
                 cos_g = 1.0  # an eye looks at the light
             if z <= 0.0 or cos_g <= 0.0:
                 continue
-            _section(B.start[k, :3], B.direction[k, :3], B.chief[k], f, z, q)
-            path_plane(B, k, q, W)
-            rho = r[-1] * (z + W[4])
+            for j in range(3):
+                q[j, 0], q[j, 1] = at[j, 0] + z * slope[j, 0], at[j, 1] + z * slope[j, 1]
+            rho = r[-1] * (z + lag)
             if (
                 min(q[0, 0], q[1, 0], q[2, 0]) > x + rho
                 or max(q[0, 0], q[1, 0], q[2, 0]) < x - rho
@@ -142,6 +167,7 @@ def _gather(B, factor, radii, weights, ring, P, N, tube, point, load, weight, wh
             if tube.size == 0:
                 found += 1
                 continue
+            path_plane(B, k, q, W)
             density = flux_density(
                 q[0, 0] - x,
                 q[0, 1] - y,
@@ -173,6 +199,7 @@ def solve_points(
     points: Floats,
     normals: Floats | None = None,
     bounced: list[Bounced] | None = None,
+    follow_waves: bool = True,
 ) -> PointLight:
     """Find the reflected light at points.
 
@@ -192,6 +219,9 @@ def solve_points(
     bounced : list of Bounced, optional
         Beams after a second reflection, from :func:`causticload.light.field.solve_field`.
 
+    follow_waves : bool
+        Whether every roller wave is followed; else as the grids take them.
+
     Returns
     -------
     light : PointLight
@@ -200,7 +230,8 @@ def solve_points(
     P = np.ascontiguousarray(points, dtype=np.float64).reshape(-1, 3)
     N = np.zeros_like(P) if normals is None else np.ascontiguousarray(normals, dtype=np.float64)
     s = np.ascontiguousarray(sun_direction, dtype=np.float64)
-    found = [_Question(lit.close, s, sun_radius, P, N).direct()]
+    near = lit.close if follow_waves else lit
+    found = [_Question(near, s, sun_radius, P, N).direct()]
     ask = _Question(lit, s, sun_radius, P, N)
     found += [ask.second(b) for b in bounced or [] if len(b.sheet)]
     parts = Parts(*(np.concatenate(a) for a in zip(*found, strict=True)))
