@@ -197,7 +197,7 @@ def field_at(lit, folder, settings):
     )
     field = solve_field(lit, sun_direction=s, sun_radius=SUN)
     assert abs(balance(field)) < 0.005
-    assert (field.images > 1).sum() <= 4  # but for points on the seam of two triangles
+    assert (field.images > 1).sum() < 30  # only on the seam of two triangles, of some 400 cells
     near = np.linalg.norm(lit.points - far, axis=1) < 0.2
     return field.load[near].mean() / s[2]
 
