@@ -22,6 +22,7 @@ from causticload.hazard.seasons import make_seasons
 from causticload.light.bvh import Engine
 from causticload.light.count import RayCount, count_spot
 from causticload.light.field import solve_field
+from causticload.light.focus import focus_share
 from causticload.light.prepare import LitScene, prepare
 from causticload.light.tally import Accumulator, direct_factor, merge_loads
 from causticload.light.year import DayResult, run_day, run_days
@@ -619,13 +620,22 @@ def _air_at(project: Project, times: Any) -> tuple[Floats, Floats]:
     return states.temperature_c, states.wind_ms
 
 
-def inspect(study: Study | Project) -> dict[str, Any]:
-    """Say what a study's model is: roles, panels, curvature, faults, tessellation check.
+def inspect(
+    study: Study | Project,
+    *,
+    at: str | datetime | np.datetime64 | None = None,
+    sun: tuple[float, float] | None = None,
+) -> dict[str, Any]:
+    """Say what a study's model is: roles, panels, curvature, faults, tessellation check, focus.
 
     Parameters
     ----------
     study : Study or Project
         The study, or one that is open already.
+    at : str or datetime, optional
+        Local clock time of a sun: also tell how much of the facade focuses where its light lands.
+    sun : (float, float), optional
+        Azimuth and elevation in degrees, instead of ``at``.
 
     Returns
     -------
@@ -638,10 +648,67 @@ def inspect(study: Study | Project) -> dict[str, Any]:
         If the input is wrong.
     """
     from causticload.scene.build import inspect_scene
+    from causticload.scene.focus import figure_focus
 
     project = _as_project(study)
     report = inspect_scene(project.scene)
     report["assumed"] = list(project.assumed)
     report["tracer"] = project.lit.tracer.name
     report["tessellation"] = [asdict(c) for c in check_tessellation(project.scene)]
+    report["figures"] = figure_focus(project.scene)
+    if at is not None or sun is not None:
+        state = _choose_sun(project, at, sun, None)
+        share = focus_share(project.lit, state.direction)
+        report["focus"] = {
+            "sun_azimuth": state.azimuth,
+            "sun_elevation": state.elevation,
+            "lit_m2": share.lit,
+            "landing_m2": share.landing,
+            "focused_m2": share.focused,
+            "share": share.share,
+        }
     return report
+
+
+def save_focus(
+    study: Study | Project,
+    path: str | os.PathLike[str],
+    *,
+    at: str | datetime | np.datetime64 | None = None,
+    sun: tuple[float, float] | None = None,
+) -> None:
+    """Write the facade with its focal distances under one sun, as VTK's PolyData.
+
+    Parameters
+    ----------
+    study : Study or Project
+        The study, or one that is open already.
+    path : path
+        The file, ending in .vtp.
+    at : str or datetime, optional
+        Local clock time of the sun.
+    sun : (float, float), optional
+        Azimuth and elevation in degrees, instead of ``at``.
+
+    Raises
+    ------
+    CausticloadError
+        If the input is wrong, or the file cannot be written.
+    """
+    from pathlib import Path
+
+    from causticload.output.files import write_whole
+    from causticload.output.meshes import facade_grid, focus_arrays
+
+    project = _as_project(study)
+    state = _choose_sun(project, at, sun, None)
+    arrays = {"panel [number]": project.scene.panel[project.scene.reflectors]}
+    grid = facade_grid(
+        project.scene,
+        {**arrays, **focus_arrays(project.scene, state.direction)},
+        {
+            "title": project.study.title,
+            "sun": f"azimuth {state.azimuth:.2f}, elevation {state.elevation:.2f} degrees",
+        },
+    )
+    write_whole(Path(path), grid.save)

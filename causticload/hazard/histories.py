@@ -118,6 +118,7 @@ def _loads(
         sun_radius=sun.radius_rad,
         points=place[None],
         normals=normal[None],
+        follow_waves=False,
     )
     cos = max(0.0, float(normal @ sun.direction))
     start = (place + lit.clearance_m * normal)[None]

@@ -134,6 +134,7 @@ def areas_in_view(
             sun_direction=sun_direction,
             sun_radius=sun_radius,
             points=eyes.place[mine],
+            follow_waves=False,
             quick=True,
         )
         parts = light.parts

@@ -81,7 +81,9 @@ class _Spot:
         inside = (i >= 0) & (i < nu) & (j >= 0) & (j < nv)
         return inside & (c.cell[np.clip(i, 0, nu - 1), np.clip(j, 0, nv - 1)] >= 0)
 
-    def light(self, points: Floats, sun: SunState, bounced: list[Bounced]) -> PointLight:
+    def light(
+        self, points: Floats, sun: SunState, bounced: list[Bounced], *, follow_waves: bool = True
+    ) -> PointLight:
         """Reflected light at points on the chart."""
         return solve_points(
             self.lit,
@@ -90,6 +92,7 @@ class _Spot:
             points=points,
             normals=np.broadcast_to(self.chart.normal, points.shape),
             bounced=bounced,
+            follow_waves=follow_waves,
         )
 
     def second(self, sun: SunState) -> list[Bounced]:
@@ -160,7 +163,8 @@ def _search(
         if sun.beam <= 0.0:
             continue
         points = spot.grid(spot.middle, half, half / 8.0)
-        light = spot.light(points, sun, [])
+        # Which minute it is, the mean over a wave's phases tells as well and sooner.
+        light = spot.light(points, sun, [], follow_waves=False)
         load = light.load.max() * sun.beam
         if load > highest:
             highest = load

@@ -111,12 +111,12 @@ def _approach(B, before, C, radius, reach, ring, sway, near, error, edge):
 
 
 @njit(cache=True, nogil=True, error_model="numpy")
-def _spread(start, direction, chief, frame):
-    """Bound the three rays: ``size`` about the chief ray at its start, ``slope`` more a metre.
+def _corner_lines(start, direction, before, chief, frame, at, slope):
+    """Corner rays as lines over the depth: at + z slope, (3, 2) each; also the longest lag.
 
-    Returns the farthest start along the chief ray too.
+    The lag is what a ray's path from its first reflection is longer than its depth.
     """
-    size = slope = lag = 0.0
+    most = -math.inf
     for j in range(3):
         w = x = y = dw = dx = dy = 0.0
         for i in range(3):
@@ -127,21 +127,21 @@ def _spread(start, direction, chief, frame):
             dw += d * frame[0, i]
             dx += d * frame[1, i]
             dy += d * frame[2, i]
-        slope = max(slope, math.hypot(dx, dy) / dw)
-        size = max(size, math.hypot(x - w * dx / dw, y - w * dy / dw))
-        lag = max(lag, abs(w))
-    return size, slope, lag
+        slope[j, 0], slope[j, 1] = dx / dw, dy / dw
+        at[j, 0], at[j, 1] = x - w * dx / dw, y - w * dy / dw
+        most = max(most, before[j] - w)
+    return most
 
 
 @njit(cache=True, nogil=True, error_model="numpy")
 def _gather(B, factor, radii, weights, ring, P, N, tube, point, load, weight, whole):
     """Write every contribution of a beam to a point; without room, count the pairs at most."""
     q, w, W = np.empty((3, 2)), np.empty(3), np.empty(5)
+    at, slope = np.empty((3, 2)), np.empty((3, 2))
     found = 0
     for k in range(factor.size):
         f, r = B.frame[k], radii[ring[k]]
-        size, slope, lag = _spread(B.start[k, :3], B.direction[k, :3], B.chief[k], f)
-        longest = max(B.before[k, 0], B.before[k, 1], B.before[k, 2]) + lag
+        lag = _corner_lines(B.start[k], B.direction[k], B.before[k], B.chief[k], f, at, slope)
         for p in range(len(P)):
             z = x = y = 0.0
             for i in range(3):
@@ -154,12 +154,9 @@ def _gather(B, factor, radii, weights, ring, P, N, tube, point, load, weight, wh
                 cos_g = 1.0  # an eye looks at the light
             if z <= 0.0 or cos_g <= 0.0:
                 continue
-            # Most points are far from most beams.
-            if math.hypot(x, y) > size + z * slope + r[-1] * (z + longest):
-                continue
-            _section(B.start[k, :3], B.direction[k, :3], B.chief[k], f, z, q)
-            path_plane(B, k, q, W)
-            rho = r[-1] * (z + W[4])
+            for j in range(3):
+                q[j, 0], q[j, 1] = at[j, 0] + z * slope[j, 0], at[j, 1] + z * slope[j, 1]
+            rho = r[-1] * (z + lag)
             if (
                 min(q[0, 0], q[1, 0], q[2, 0]) > x + rho
                 or max(q[0, 0], q[1, 0], q[2, 0]) < x - rho
@@ -170,6 +167,7 @@ def _gather(B, factor, radii, weights, ring, P, N, tube, point, load, weight, wh
             if tube.size == 0:
                 found += 1
                 continue
+            path_plane(B, k, q, W)
             density = flux_density(
                 q[0, 0] - x,
                 q[0, 1] - y,
@@ -201,6 +199,7 @@ def solve_points(
     points: Floats,
     normals: Floats | None = None,
     bounced: list[Bounced] | None = None,
+    follow_waves: bool = True,
     quick: bool = False,
 ) -> PointLight:
     """Find the reflected light at points.
@@ -220,6 +219,8 @@ def solve_points(
         own across it, as on an eye that turns to it.
     bounced : list of Bounced, optional
         Beams after a second reflection, from :func:`causticload.light.field.solve_field`.
+    follow_waves : bool
+        Whether every roller wave is followed; else as the grids take them.
     quick : bool
         Refine tubes no further than for grids: to tell what is in view, not to read off a peak.
 
@@ -231,7 +232,7 @@ def solve_points(
     P = np.ascontiguousarray(points, dtype=np.float64).reshape(-1, 3)
     N = np.zeros_like(P) if normals is None else np.ascontiguousarray(normals, dtype=np.float64)
     s = np.ascontiguousarray(sun_direction, dtype=np.float64)
-    near = lit if quick else lit.close
+    near = lit.close if follow_waves else lit
     found = [_Question(near, s, sun_radius, P, N, quick=quick).direct()]
     ask = _Question(lit, s, sun_radius, P, N, quick=quick)
     found += [ask.second(b) for b in bounced or [] if len(b.sheet)]

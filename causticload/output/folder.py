@@ -27,6 +27,7 @@ from causticload.output.records import (
 )
 from causticload.output.results import ReceiverYear, Year
 from causticload.scene.model import Bools, Floats, Scene
+from causticload.sky.position import sun_direction
 from causticload.study import input_hashes, read_study, write_study
 
 __all__ = ["DayStore", "read_year", "save_year", "working_in"]
@@ -164,16 +165,32 @@ def _save_arrays(
     )
     write_whole(path / "receivers.vtp", receivers.save)
     r = scene.reflectors
+    focus, sun = _focus_at_worst(year, scene)
     facade = meshes.facade_grid(
         scene,
         {
             "panel [number]": scene.panel[r],
             "contribution to the worst peak [W/m2]": year.contribution[scene.panel[r]],
             "curvature [1/m]": scene.curvature[r].mean(axis=1),
+            **focus,
         },
-        notes,
+        {**notes, "sun of the focal distances": sun},
     )
     write_whole(path / "facade.vtp", facade.save)
+
+
+def _focus_at_worst(year: Year, scene: Scene) -> tuple[dict[str, Floats], str]:
+    """Focal distances under the sun of the worst peak that was looked at closely, and that sun."""
+    check = next((e.check for e in year.episodes if e.check is not None), None)
+    if check is None:
+        return {}, "none: no peak was looked at closely"
+    direction = sun_direction(
+        np.radians([check.sun_azimuth]),
+        np.radians([check.sun_elevation]),
+        north_rad=scene.north_rad,
+    )
+    sun = f"azimuth {check.sun_azimuth:.2f}, elevation {check.sun_elevation:.2f} degrees"
+    return meshes.focus_arrays(scene, direction[0]), sun
 
 
 def _save_chart_rows(year: Year, path: Path) -> None:

@@ -353,12 +353,46 @@ def summarise_inspect(report: Mapping[str, Any]) -> str:
         "Curvature", [f"{c['surface']}: {c['sentence']}" for c in report.get("curvature", [])]
     )
     lines += _listed(
+        "Panes that are not flat", [_figure_line(f) for f in report.get("figures", [])]
+    )
+    focus = report.get("focus")
+    if focus:
+        lines += _listed(
+            f"Focus, sun at azimuth {focus['sun_azimuth']:.1f}°, "
+            f"elevation {focus['sun_elevation']:.1f}°",
+            [
+                f"{100.0 * focus['share']:.0f} % of the {focus['lit_m2']:,.0f} m² in the sun "
+                "gather their light to at least twice its density where it meets a receiver "
+                "(before the sun's own size blurs it; single reflection, outermost pane)."
+            ],
+        )
+    lines += _listed(
         "Found in the model",
         [f"{f['message']} {f.get('hint', '')}".strip() for f in report.get("faults", [])],
     )
     lines += _listed("Assumed", report.get("assumed", []))
     lines += ["", f"Rays will be traced by {report.get('tracer', 'nothing yet')}."]
     return "\n".join(lines)
+
+
+def _figure_line(f: Mapping[str, Any]) -> str:
+    """Say how one pane of a surface's panels bends."""
+    said = [f"{f['surface']}, pane {f['pane']} of {f['panels']} panels ({f['figure']})"]
+    if f["short_focal_m"]:
+        low, high = f["bow_mm"]
+        said.append(
+            f"bow {low:+.2f} mm" if high - low < 0.005 else f"bow {low:+.2f}…{high:+.2f} mm"
+        )
+        for name in ("short", "long"):
+            if f[f"{name}_focal_m"]:
+                nearest, _, farthest = f[f"{name}_focal_m"]
+                span = f"{nearest:.1f} m"
+                if abs(farthest - nearest) > 0.05 * abs(nearest):
+                    span = f"{nearest:.1f}…{farthest:.1f} m"
+                said.append(f"{name}er focal length {span}")
+    if f["wave_focal_m"]:
+        said.append(f"roller wave focuses at {f['wave_focal_m'][0]:.1f} m")
+    return "; ".join(said) + "."
 
 
 def summarise_finishes(rows: Sequence[Mapping[str, Any]]) -> str:
