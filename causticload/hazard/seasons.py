@@ -114,7 +114,7 @@ def _season(group: Sequence[Episode], tz: ZoneInfo, day_stride: int) -> Season:
     by_day: dict[date, list[Episode]] = {}
     for e in group:
         by_day.setdefault(e.day, []).append(e)
-    minutes = {d: _union_minutes(each) for d, each in by_day.items()}
+    minutes = {d: union_minutes(each) for d, each in by_day.items()}
     starts = [_clock(e.start, tz) for e in group]
     ends = [_clock(e.end, tz) for e in group]
     return Season(
@@ -133,8 +133,19 @@ def _season(group: Sequence[Episode], tz: ZoneInfo, day_stride: int) -> Season:
     )
 
 
-def _union_minutes(episodes: Sequence[Episode]) -> float:
-    """Minutes of a day in which at least one of the episodes is on."""
+def union_minutes(episodes: Sequence[Episode]) -> float:
+    """Minutes of a day in which at least one of the episodes is on.
+
+    Parameters
+    ----------
+    episodes : sequence of Episode
+        Episodes of one day.
+
+    Returns
+    -------
+    minutes : float
+        Time that several share counts once. [min]
+    """
     total, reached = 0.0, -np.inf
     for begin, end in sorted((_minutes(e.start), _minutes(e.end)) for e in episodes):
         total += max(0.0, end - max(begin, reached))
