@@ -36,6 +36,34 @@ def severity(item: Episode | Season) -> tuple[float, ...]:
     return (people, -minutes, -item.peak)
 
 
+def worth_a_close_look(seasons: Sequence[Season], most: int) -> list[Season]:
+    """Choose the seasons whose worst peak is looked at closely.
+
+    The strongest of each receiver and sort of harm comes first, so that a place with many
+    seasons does not leave another without one; then the rest, worst first.
+
+    Parameters
+    ----------
+    seasons : sequence of Season
+        Worst first.
+    most : int
+        How many, at least 0.
+
+    Returns
+    -------
+    chosen : list of Season
+        At most ``most``.
+    """
+    strongest: dict[tuple[str, str], Season] = {}
+    for s in seasons:
+        place = (s.receiver, s.protects)
+        if place not in strongest or s.peak > strongest[place].peak:
+            strongest[place] = s
+    first = sorted(strongest.values(), key=severity)
+    taken = {s.number for s in first}
+    return [*first, *(s for s in seasons if s.number not in taken)][:most]
+
+
 def make_seasons(
     episodes: Sequence[Episode], *, zone: str, day_stride: int
 ) -> tuple[list[Episode], list[Season]]:

@@ -196,8 +196,6 @@ def _count_table(evidence: Evidence, checked: Sequence[Episode]) -> Table:
     return Table(
         "tab-counts",
         phrases.COUNTS_CAPTION,
-        columns(
-            phrases.COUNTS_COLUMNS, (0.8, 1.2, 0.9, 1.9, 0.7, 0.9, 1.3, 0.7), (0, 2, 4, 5, 6)
-        ),
+        columns(phrases.COUNTS_COLUMNS, (0.8, 1.2, 0.9, 1.9, 0.7, 0.9, 1.3, 0.7), (0, 2, 4, 5, 6)),
         tuple(rows),
     )

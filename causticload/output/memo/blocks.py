@@ -99,6 +99,7 @@ class Heading:
     level: int
     text: str
     key: str
+    new_page: bool = False  # on paper
 
 
 @dataclass(frozen=True)

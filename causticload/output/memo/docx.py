@@ -147,9 +147,11 @@ class _Writer:
         word = self.word
         if isinstance(block, Heading):
             paragraph = word.add_paragraph(style=f"Heading {block.level}")
-            with_mark = self._mark(paragraph, block.key)
+            if block.new_page:
+                paragraph.paragraph_format.page_break_before = True
+            close = self._mark(paragraph, block.key)
             self._runs(paragraph, block.text)
-            with_mark()
+            close()
         elif isinstance(block, (Text, Note)):
             style = "Notice" if isinstance(block, Note) else "Normal"
             self._runs(word.add_paragraph(style=style), block.text)
@@ -221,7 +223,8 @@ class _Writer:
                 cells[k].width = widths[k]
                 paragraph = cells[k].paragraphs[0]
                 is_head = i < head or (not head and k == 0)
-                paragraph.style = self.word.styles["Table Head" if is_head else "Table Text"]
+                # By its id: looking styles up by name takes longer than all the rest.
+                paragraph._p.style = "TableHead" if is_head else "TableText"
                 if ends[k] == "right":
                     paragraph.alignment = WD_ALIGN_PARAGRAPH.RIGHT
                 self._runs(paragraph, text)
@@ -367,9 +370,7 @@ def _number_headings(word: Any) -> None:
     first = numbering.find(qn("w:num"))
     first.addprevious(outline)
     numbering.append(
-        parse_xml(
-            f'<w:num {nsdecls("w")} w:numId="90"><w:abstractNumId w:val="90"/></w:num>'
-        )
+        parse_xml(f'<w:num {nsdecls("w")} w:numId="90"><w:abstractNumId w:val="90"/></w:num>')
     )
     for level in (1, 2):
         properties = word.styles[f"Heading {level}"].element.get_or_add_pPr()

@@ -152,7 +152,7 @@ class Evidence:
 
 
 def _part(path: Path, name: str) -> Floats:
-    """Triangles (k, 3, 3) of a named part of a GLB file, turned to Z up; none if it is not there."""
+    """Triangles (k, 3, 3) of a named part of a GLB file, turned to Z up; maybe none."""
     glb = trimesh.load_scene(path)
     parts = [np.zeros((0, 3, 3))]
     for node in glb.graph.nodes_geometry:

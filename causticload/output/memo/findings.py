@@ -102,6 +102,27 @@ def is_total(episode: Episode) -> bool:
     return episode.peak > episode.reflected * (1.0 + 1e-9)
 
 
+def extras_of(year: Year, finding: Finding) -> dict[str, Any]:
+    """What a year worked out beyond loads for the season of a finding's main episode.
+
+    Parameters
+    ----------
+    year : Year
+        The year.
+    finding : Finding
+        One of its findings.
+
+    Returns
+    -------
+    extras : dict
+        Empty if the run worked nothing out.
+    """
+    for season in year.seasons:
+        if season.number == finding.main.season:
+            return dict(getattr(season, "finding", None) or {})
+    return {}
+
+
 def gather(year: Year) -> list[Finding]:
     """Gather a year's seasons into findings.
 
@@ -143,9 +164,7 @@ def gather(year: Year) -> list[Finding]:
                     for c in names
                 ),
                 worst=max(mine, key=lambda e: (e.peak, -e.number)),
-                looked_at=max(
-                    checked, key=lambda e: (peak_of(e).value, -e.number), default=None
-                ),
+                looked_at=max(checked, key=lambda e: (peak_of(e).value, -e.number), default=None),
                 seasons=tuple(s.number for s in seasons),
             )
         )

@@ -1,4 +1,4 @@
-"""The first half of a memo: what was asked, what stands there, what was assumed, how it was done."""
+"""The first half of a memo: the question, the site, what was assumed, and the method."""
 
 from __future__ import annotations
 
@@ -139,9 +139,7 @@ def _panel_table(evidence: Evidence) -> Table:
     rows = []
     for number in np.unique(p.surface):
         mine = p.surface == number
-        spread = [
-            phrases.MIDDLE_RANGE.format(low=a.min(), high=a.max()) for a in p.size[mine].T
-        ]
+        spread = [phrases.MIDDLE_RANGE.format(low=a.min(), high=a.max()) for a in p.size[mine].T]
         rows.append(
             (
                 surfaces[int(number)]["name"],
@@ -225,8 +223,7 @@ def sources(evidence: Evidence) -> Iterator[Block]:
 def _finish_row(finish: Finish) -> tuple[str, ...]:
     theta = np.radians([0.0, 60.0])
     value, low, high = (
-        law(theta).sum(axis=0).mean(axis=1)
-        for law in (finish.reflectance, finish.low, finish.high)
+        law(theta).sum(axis=0).mean(axis=1) for law in (finish.reflectance, finish.low, finish.high)
     )
 
     def told(band: int, k: int) -> str:
@@ -295,9 +292,7 @@ def _criteria(criteria: list[dict[str, Any]]) -> Iterator[Block]:
     )
     yield Text(phrases.MEMORY_TEXT.format(memory=strong(phrases.FROM_MEMORY)))
     used = {c["confidence"] for c in criteria}
-    yield Bullets(
-        tuple(f"{strong(k)}: {v}" for k, v in CONFIDENCE_MEANING.items() if k in used)
-    )
+    yield Bullets(tuple(f"{strong(k)}: {v}" for k, v in CONFIDENCE_MEANING.items() if k in used))
 
 
 def method(evidence: Evidence) -> Iterator[Block]:

@@ -37,7 +37,6 @@ from causticload.output.memo.blocks import (
     Block,
     Bullets,
     Heading,
-    Listing,
     Memo,
     Note,
     Picture,
@@ -157,9 +156,7 @@ class _Pages(BaseDocTemplate):  # type: ignore[misc]
         )
         self.memo = memo
         self.last = 0
-        frame = Frame(
-            LEFT, BOTTOM, WIDTH, A4[1] - TOP - BOTTOM, 0, 0, 0, 0, id="text"
-        )
+        frame = Frame(LEFT, BOTTOM, WIDTH, A4[1] - TOP - BOTTOM, 0, 0, 0, 0, id="text")
         self.addPageTemplates(PageTemplate(frames=[frame], onPage=self._foot))
 
     def _foot(self, canvas: Any, _: Any) -> None:
@@ -173,7 +170,7 @@ class _Pages(BaseDocTemplate):  # type: ignore[misc]
         canvas.drawRightString(A4[0] - LEFT, 10 * mm, text)
         canvas.restoreState()
 
-    def afterFlowable(self, flowable: Any) -> None:  # noqa: N802 - the library calls it so
+    def afterFlowable(self, flowable: Any) -> None:
         """Tell the table of contents and the outline of each heading."""
         level = {"h1": 0, "h2": 1}.get(getattr(getattr(flowable, "style", None), "name", ""))
         if level is None or not hasattr(flowable, "key"):
@@ -183,7 +180,7 @@ class _Pages(BaseDocTemplate):  # type: ignore[misc]
         self.canv.addOutlineEntry(text, flowable.key, level, closed=level == 0)
         self.notify("TOCEntry", (level, escape(text), self.page, flowable.key))
 
-    def afterPage(self) -> None:  # noqa: N802 - the library calls it so
+    def afterPage(self) -> None:
         """Count the pages for the next pass."""
         self.last = max(self.last, self.page)
 
@@ -274,7 +271,7 @@ class _Writer:
         text = f"<a name={quoteattr(block.key)}/>{label}&nbsp;&nbsp;{self._marked(block.text)}"
         paragraph = Paragraph(text, STYLES[f"h{block.level}"])
         paragraph.key = block.key
-        return [CondPageBreak(55 * mm), paragraph]
+        return [CondPageBreak(A4[1] if block.new_page else 55 * mm), paragraph]
 
     def _caption(self, block: Table | Picture, style: str) -> Any:
         caption = phrases.CAPTION.format(

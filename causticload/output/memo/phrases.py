@@ -59,9 +59,9 @@ PURPOSE_TEXT = (
     "side of the solstice."
 )
 SCOPE_TEXT = (
-    "In scope are loads by mirror-like reflection from the surfaces named as reflectors in {roles}, "
-    "on the surfaces named as receivers. Heat gain inside the building, daylight, and light from "
-    "lamps are not in scope."
+    "In scope are loads by mirror-like reflection from the surfaces named as reflectors in "
+    "{roles}, on the surfaces named as receivers. Heat gain inside the building, daylight, and "
+    "light from lamps are not in scope."
 )
 DECIDES = (
     "This memo is a screening aid. Local codes and licensed practice decide; where they are "
@@ -83,7 +83,9 @@ GLANCE_UNCHECKED = (
 )
 PLACES = {1: "1 place was"}
 PLACES_MANY = "{n} places were"
-OVERVIEW_CAPTION = "Findings, worst first. Days and hours are those with light over the lowest limit."
+OVERVIEW_CAPTION = (
+    "Findings, worst first. Days and hours are those with light over the lowest limit."
+)
 OVERVIEW_COLUMNS = ("No.", "Where", "Who or what", "Days", "Local clock", "Strongest", "Confidence")
 
 # --- who is exposed -----------------------------------------------------------------------------
@@ -153,8 +155,9 @@ GLASS_TEXT = (
     "stand-in or from memory must be replaced by the maker's data before the study is relied on."
 )
 SKY_CLEAR = (
-    "Beam and diffuse irradiance are those of a cloudless sky (Ineichen and Perez) with {turbidity}. "
-    "Clouds are not counted: durations are those of a year in which the sun always shines."
+    "Beam and diffuse irradiance are those of a cloudless sky (Ineichen and Perez) with "
+    "{turbidity}. Clouds are not counted: durations are those of a year in which the sun always "
+    "shines."
 )
 TURBIDITY_MONTHLY = "the Linke turbidity of each month from a worldwide table"
 TURBIDITY_GIVEN = "a Linke turbidity of {value:g}"
@@ -214,7 +217,7 @@ LOAD_PLAN = (
     "larger load is shown. Colours are even in the square root of the load. Lines: reflected load "
     "alone equals a limit (median of 3 by 3 cells)."
 )
-HOURS_PLAN = "Hours of the year over the limit \"{criterion}\" ({limit}); white: never."
+HOURS_PLAN = 'Hours of the year over the limit "{criterion}" ({limit}); white: never.'
 IMAGE_PLAN = (
     "Most reflected images of the sun in view at once in the year. Where the number jumps, a "
     "caustic passed."
@@ -245,41 +248,50 @@ LIMIT_COLUMNS = (
 )
 LIMIT_CAPTION = "{receiver}: how often and how long each limit is exceeded."
 PEAK_CHECKED = (
-    "Strongest looked at closely: {load} ({quantity}; {reflected} of it by reflection) at {place} on "
-    "{when}, with the sun at azimuth {azimuth:.0f}° and elevation {elevation:.0f}°. {images} of the "
-    "sun {are} in view there at once; the region over half the peak is {width:.2f} m across."
+    "Strongest looked at closely: {load} ({quantity}; {reflected} of it by reflection) at {place} "
+    "on {when}, with the sun at azimuth {azimuth:.0f}° and elevation {elevation:.0f}°. {images} "
+    "of the sun {are} in view there at once; the region over half the peak is {width:.2f} m "
+    "across."
 )
 IMAGES = {1: "1 reflected image"}
 IMAGES_MANY = "{n} reflected images"
 PEAK_GRID = (
-    "Strongest by the grid: {load} ({quantity}; {reflected} of it by reflection), mean over a cell, "
-    "at {place} on {when}. This peak was not looked at closely and not counted; it can be higher."
+    "Strongest by the grid: {load} ({quantity}; {reflected} of it by reflection), mean over a "
+    "cell, at {place} on {when}. This peak was not looked at closely and not counted; it can be "
+    "higher."
 )
 GRID_HIGHER = (
-    "By the grid another moment is stronger: {load} at {place} on {when} (episode {episode}), which "
-    "was not looked at closely. Treat it as possible and not as shown."
+    "By the grid another moment is stronger: {load} at {place} on {when} (episode {episode}), "
+    "which was not looked at closely. Treat it as possible and not as shown."
 )
 GRID_DIFFERS = (
-    "The grid gave {grid} for the same episode, the close look {close}. The two should be near each "
-    "other: have this peak looked into before it is used."
+    "The grid gave {grid} for the same episode, the close look {close}. The two should be near "
+    "each other: have this peak looked into before it is used."
 )
 COUNT_AGREES = (
-    "Over a disc of {radius:.0f} mm radius the tubes give {tubes:,.0f} W/m² and {rays:,} random rays "
-    "{count:,.0f} ± {error:,.0f} W/m², which agree."
+    "Over a disc of {radius:.0f} mm radius the tubes give {tubes:,.0f} W/m² and {rays:,} random "
+    "rays {count:,.0f} ± {error:,.0f} W/m², which agree."
 )
 COUNT_DISAGREES = (
-    "Over a disc of {radius:.0f} mm radius the tubes give {tubes:,.0f} W/m² and {rays:,} random rays "
-    "{count:,.0f} ± {error:,.0f} W/m², which DISAGREE by more than three standard errors. Do not "
-    "rely on this peak."
+    "Over a disc of {radius:.0f} mm radius the tubes give {tubes:,.0f} W/m² and {rays:,} random "
+    "rays {count:,.0f} ± {error:,.0f} W/m², which DISAGREE by more than three standard errors. Do "
+    "not rely on this peak."
 )
 WHO_LINE = "Who or what: {text}"
 PANELS_LINE = (
-    "Panels: {n} send light there, from {distance:.0f} m away on average; the strongest {half} bring "
-    "half of it ({table})."
+    "Panels: {n} send light there, from {distance:.0f} m away on average; the strongest {half} "
+    "bring half of it ({table})."
 )
 NO_PANELS = "Panels: not traced for this finding in this run."
 CONTRIBUTORS_CAPTION = "{receiver}: the strongest panels behind the peak."
-CONTRIBUTOR_COLUMNS = ("Panel", "Surface", "Middle x, y, z (m)", "Load (W/m²)", "Share", "Running share")
+CONTRIBUTOR_COLUMNS = (
+    "Panel",
+    "Surface",
+    "Middle x, y, z (m)",
+    "Load (W/m²)",
+    "Share",
+    "Running share",
+)
 CONFIDENCE_LINE = "Confidence: {level}. {reasons}"
 FINDING_FIGURE = (
     "{receiver}. a: peak reflected load of the year around the spot (ring), with the limits as "
@@ -289,9 +301,9 @@ FINDING_FIGURE = (
 )
 FINDING_FIGURE_PLAIN = (
     "{receiver}. a: peak reflected load of the year around the spot (ring), with the limits as "
-    "lines. b: what an eye at the spot sees of the facade; the panels were not traced. c: the year by "
-    "local clock; outlined and hatched: a limit is exceeded. d: the day of the peak; dots follow "
-    "the strongest place of the episode."
+    "lines. b: what an eye at the spot sees of the facade; the panels were not traced. c: the "
+    "year by local clock; outlined and hatched: a limit is exceeded. d: the day of the peak; dots "
+    "follow the strongest place of the episode."
 )
 MORE_SPANS = " and {n} more"
 FIRM, FAIR, WEAK = "firm", "fair", "weak"
@@ -313,7 +325,8 @@ WHY_MESH = "The mesh may be too coarse: see the check of its shape."
 # --- eyes ---------------------------------------------------------------------------------------
 EYES_NONE_GIVEN = "The study names no observers. Eyes were not assessed in this run."
 EYES_NOT_ASSESSED = (
-    "The study names observers ({names}). Glare and harm to their eyes were not assessed in this run."
+    "The study names observers ({names}). Glare and harm to their eyes were not assessed in this "
+    "run."
 )
 EYES_TEXT = (
     "An after-image is a bright spot that stays in view for seconds and hides what is behind it. "
@@ -331,9 +344,10 @@ EYES_COLUMNS = (
     "Retinal burn possible (min a year)",
 )
 EYES_WORST = (
-    "{name}, worst moment: {when}, at {place}; {images} image(s) of the sun {off:.0f}° from the line "
-    "of sight. {cls}. Illuminance at the eye {lux:,.0f} lx, veil {veil:,.0f} cd/m², {contrast:.0f} % of "
-    "contrast left; retinal irradiance {retinal:,.0f} W/m² against {limit:,.0f} W/m² for an after-image."
+    "{name}, worst moment: {when}, at {place}; {images} image(s) of the sun {off:.0f}° from the "
+    "line of sight. {cls}. Illuminance at the eye {lux:,.0f} lx, veil {veil:,.0f} cd/m², "
+    "{contrast:.0f} % of contrast left; retinal irradiance {retinal:,.0f} W/m² against "
+    "{limit:,.0f} W/m² for an after-image."
 )
 EYES_NOTHING = "{name}: no after-image found under these assumptions."
 EYES_SOURCE = "{criterion}: {source}"
@@ -382,7 +396,9 @@ MITIGATION_OPTIONS = (
     "The place itself. Other materials, another use, or closing the place at the hours of the "
     "finding. This removes the exposure and not the light.",
 )
-MITIGATION_NONE = "No exceedance was found under these assumptions, so no measure follows from this study."
+MITIGATION_NONE = (
+    "No exceedance was found under these assumptions, so no measure follows from this study."
+)
 
 # --- limits -------------------------------------------------------------------------------------
 LIMITS_ITEMS = (
@@ -390,8 +406,8 @@ LIMITS_ITEMS = (
     "How flat the panes are. Bow, roller wave and fixing tolerance can double a load at a spot and "
     "move it.",
     "The mesh. An error of 1 mrad in a normal moves light by 60 mm at 30 m.",
-    "Between the days that were solved ({stride} days apart) and between steps ({step} minutes) thin "
-    "foci can be missed; durations are whole steps.",
+    "Between the days that were solved ({stride} days apart) and between steps ({step} minutes) "
+    "thin foci can be missed; durations are whole steps.",
     "More than two reflections, edges of shadows before the first reflection, trees and people are "
     "not followed.",
     "Loads add direct light, diffuse light and reflected light; heat from warm surfaces and moving "
@@ -436,7 +452,9 @@ VIEW_3D_HELP = (
     "Drag to turn, drag with Shift or the right button to move, wheel to come nearer. Arrow keys "
     "turn; plus and minus come nearer. Colours: peak reflected load in the year, as in the scale."
 )
-VIEW_3D_MISSING = "This browser shows no 3D graphics. The figures and tables are complete without it."
+VIEW_3D_MISSING = (
+    "This browser shows no 3D graphics. The figures and tables are complete without it."
+)
 SORT_HINT = "Press a column's title to sort by it."
 
 # --- comparison ---------------------------------------------------------------------------------
@@ -451,10 +469,10 @@ FATES = {
     "same": "as before",
 }
 COMPARE_TEXT = (
-    "{gone} of {all} findings are gone, {better} better, {same} as before, {worse} worse, and {new} "
-    "new. A finding counts as better or worse if its hours over the limit at the place that is hit "
-    "longest, or its grid peak, change by more than {part:.0f} %; if one falls and the other rises, "
-    "it counts as worse."
+    "{gone} of {all} findings are gone, {better} better, {same} as before, {worse} worse, and "
+    "{new} new. A finding counts as better or worse if its hours over the limit at the place that "
+    "is hit longest, or its grid peak, change by more than {part:.0f} %; if one falls and the "
+    "other rises, it counts as worse."
 )
 COMPARE_NONE = "Neither design exceeds a limit: no exceedance found under these assumptions."
 COMPARE_CAPTION = "Findings before and after, the changes for the worse first."

@@ -31,6 +31,7 @@ from causticload.output.memo.findings import (
     LimitFacts,
     Peak,
     Span,
+    extras_of,
     is_total,
     need_of,
     peak_of,
@@ -40,7 +41,7 @@ from causticload.output.memo.front import columns, limit_text, when
 from causticload.output.memo.sureness import grid_is_doubtful, sureness
 
 MOST_SPANS = 3
-MOST_PANELS = 8
+MOST_PANELS = 6
 
 
 def the_year(evidence: Evidence, findings: Sequence[Finding]) -> Iterator[Block]:
@@ -92,9 +93,7 @@ def the_year(evidence: Evidence, findings: Sequence[Finding]) -> Iterator[Block]
         )
 
 
-def _criterion_for_plan(
-    evidence: Evidence, findings: Sequence[Finding]
-) -> dict[str, Any] | None:
+def _criterion_for_plan(evidence: Evidence, findings: Sequence[Finding]) -> dict[str, Any] | None:
     flat = {r.name for r in flat_receivers(evidence)}
     for finding in findings:
         if finding.receiver in flat:
@@ -210,7 +209,7 @@ def all_findings(evidence: Evidence, findings: Sequence[Finding]) -> Iterator[Bl
     block : Block
         A section.
     """
-    yield Heading(1, phrases.FINDINGS, "sec-findings")
+    yield Heading(1, phrases.FINDINGS, "sec-findings", new_page=bool(findings))
     if not findings:
         yield Note(words.NO_EXCEEDANCE)
         return
@@ -235,7 +234,7 @@ def one_finding(evidence: Evidence, finding: Finding) -> Iterator[Block]:
     """
     f, e = finding, finding.main
     title = phrases.FINDING.format(n=f.number, receiver=f.receiver, whom=phrases.WHO[f.protects])
-    yield Heading(2, title, f"sec-finding-{f.number}")
+    yield Heading(2, title, f"sec-finding-{f.number}", new_page=f.number > 1)
     yield Table(
         f"tab-finding-{f.number}",
         phrases.LIMIT_CAPTION.format(receiver=f.receiver),
@@ -299,7 +298,7 @@ def _facts(evidence: Evidence, f: Finding) -> Iterator[str]:
     yield phrases.WHO_LINE.format(
         text=phrases.EXPOSED.get((f.protects, f.kind), phrases.EXPOSED_ELSE[f.protects])
     )
-    extras = extras_of(evidence, f)
+    extras = extras_of(evidence.year, f)
     for key, text in (("skin", phrases.SKIN_LINE), ("surface", phrases.SURFACE_LINE)):
         if extras.get(key):
             yield text.format(text=extras[key]["text"])
@@ -313,9 +312,7 @@ def _facts(evidence: Evidence, f: Finding) -> Iterator[str]:
 def _grid_doubts(evidence: Evidence, f: Finding, peak: Peak) -> Iterator[str]:
     e = f.main
     if grid_is_doubtful(f):
-        yield phrases.GRID_DIFFERS.format(
-            grid=words.load(e.peak), close=words.load(peak.value)
-        )
+        yield phrases.GRID_DIFFERS.format(grid=words.load(e.peak), close=words.load(peak.value))
     if f.worst.number != e.number and f.worst.peak > peak.value:
         top = max(f.worst.path, key=lambda s: s.peak)
         yield phrases.GRID_HIGHER.format(
@@ -375,29 +372,8 @@ def _contributor_table(f: Finding) -> Table:
     )
 
 
-def extras_of(evidence: Evidence, f: Finding) -> dict[str, Any]:
-    """What the year worked out beyond loads for the season of a finding's main episode.
-
-    Parameters
-    ----------
-    evidence : Evidence
-        The year.
-    f : Finding
-        The finding.
-
-    Returns
-    -------
-    extras : dict
-        Empty if the run worked nothing out.
-    """
-    for season in evidence.year.seasons:
-        if season.number == f.main.season:
-            return dict(getattr(season, "finding", None) or {})
-    return {}
-
-
 def _temperature(evidence: Evidence, f: Finding) -> Iterator[Block]:
-    row = extras_of(evidence, f).get("history")
+    row = extras_of(evidence.year, f).get("history")
     path = evidence.folder / "histories.npz"
     if row is None or not path.is_file():
         return

@@ -7,7 +7,7 @@ import numpy as np
 from causticload.optics.finish import Finish
 from causticload.output.memo import phrases
 from causticload.output.memo.evidence import Evidence
-from causticload.output.memo.findings import Finding, peak_of
+from causticload.output.memo.findings import Finding, extras_of, peak_of
 
 RANGE_60 = 0.05  # a solar reflectance at 60° left open by more than this is worth a word
 GRID_ABOVE = 1.3  # a cell's mean cannot be far over the peak that a close look finds in it
@@ -73,44 +73,28 @@ def sureness(evidence: Evidence, finding: Finding) -> tuple[str, tuple[str, ...]
     reasons : tuple of str
         Sentences.
     """
-    check = finding.main.check
-    reasons = []
-    level = phrases.FIRM
-    if check is None:
-        reasons.append(phrases.WHY_NOT_COUNTED)
-        level = phrases.FAIR
-    else:
-        reasons.append(phrases.WHY_COUNTED if check.agrees else phrases.WHY_DISAGREES)
-    coarse = any(
-        c["verdict"] != "carries the answer" for c in evidence.summary["tessellation"]
-    )
-    doubts = [
-        (check is not None and not check.agrees, ""),
-        (grid_is_doubtful(finding), phrases.WHY_GRID),
-        (coarse, phrases.WHY_MESH),
-    ]
-    names = open_finishes(evidence)
-    if names:
-        reasons.append(phrases.WHY_GLASS.format(names=", ".join(names)))
-        level = phrases.FAIR
-    for facts in finding.limits:
-        c = facts.criterion
-        if "memory" in c["confidence"]:
-            reasons.append(
-                phrases.WHY_LIMIT.format(name=f'"{c["name"]}"', confidence=c["confidence"])
-            )
-            level = phrases.FAIR
-    for doubt, text in doubts:
-        if doubt:
-            level = phrases.WEAK
-            reasons += [text] if text else []
-    given = getattr(
-        next((s for s in evidence.year.seasons if s.number == finding.main.season), None),
-        "finding",
-        None,
-    )
-    if given and given.get("confidence"):
-        own = tuple(given["confidence"]["reasons"])
+    given = extras_of(evidence.year, finding).get("confidence")
+    if given:
         doubt = (phrases.WHY_GRID,) if grid_is_doubtful(finding) else ()
-        return given["confidence"]["grade"], (*own, *doubt)
-    return level, tuple(reasons)
+        return given["grade"], (*given["reasons"], *doubt)
+    check = finding.main.check
+    names = open_finishes(evidence)
+    recalled = [f.criterion for f in finding.limits if "memory" in f.criterion["confidence"]]
+    coarse = any(c["verdict"] != "carries the answer" for c in evidence.summary["tessellation"])
+    fair = [phrases.WHY_GLASS.format(names=", ".join(names))] if names else []
+    fair += [
+        phrases.WHY_LIMIT.format(name=f'"{c["name"]}"', confidence=c["confidence"])
+        for c in recalled
+    ]
+    weak = []
+    if check is None:
+        weak.append(phrases.WHY_NOT_COUNTED)
+    elif not check.agrees:
+        weak.append(phrases.WHY_DISAGREES)
+    if grid_is_doubtful(finding):
+        weak.append(phrases.WHY_GRID)
+    if coarse:
+        weak.append(phrases.WHY_MESH)
+    firm = [phrases.WHY_COUNTED] if check is not None and check.agrees else []
+    level = phrases.WEAK if weak else phrases.FAIR if fair else phrases.FIRM
+    return level, (*firm, *weak, *fair)

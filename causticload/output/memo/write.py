@@ -92,14 +92,57 @@ def write_memo(
     with working_in(evidence.folder):
         drawings = Drawings(evidence.folder / "figures" / "memo")
         return [
-            _write(memo, drawings, evidence, evidence.folder / f"memo.{name}", stamp)
+            write_one(
+                memo, drawings, evidence.folder / f"memo.{name}", now=stamp, evidence=evidence
+            )
             for name in asked
         ]
 
 
-def _write(
-    memo: Memo, drawings: Drawings, evidence: Evidence | None, path: Path, now: datetime
+def available_formats() -> tuple[str, ...]:
+    """Formats that can be written with what is installed.
+
+    Returns
+    -------
+    formats : tuple of str
+        HTML at least.
+    """
+    return tuple(f for f in FORMATS if all(find_spec(m) is not None for m in _LIBRARIES[f]))
+
+
+def write_one(
+    memo: Memo,
+    drawings: Drawings,
+    path: Path,
+    *,
+    now: datetime,
+    evidence: Evidence | None = None,
 ) -> Path:
+    """Write a memo in the format that a path's ending names.
+
+    Parameters
+    ----------
+    memo : Memo
+        The memo.
+    drawings : Drawings
+        Its figures.
+    path : Path
+        Where to; it ends in .docx, .pdf or .html.
+    now : datetime
+        Time stamp.
+    evidence : Evidence, optional
+        The year whose model turns in a page.
+
+    Returns
+    -------
+    path : Path
+        The same.
+
+    Raises
+    ------
+    ResultError
+        If it cannot be written.
+    """
     write_whole(path, _writer(path.suffix, memo, drawings, evidence, now))
     return path
 

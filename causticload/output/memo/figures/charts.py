@@ -106,7 +106,7 @@ def _bins(times: NDArray[np.datetime64], offset: Any, minutes: float, bins: int)
     return np.minimum((seconds % 86_400) // round(60.0 * minutes), bins - 1)
 
 
-def draw_calendar(axes: Any, shown: Calendar) -> Any:
+def draw_calendar(axes: Any, shown: Calendar, *, every: int = 1) -> Any:
     """Draw a year by day and clock; hours over a limit are outlined and hatched.
 
     Parameters
@@ -115,6 +115,8 @@ def draw_calendar(axes: Any, shown: Calendar) -> Any:
         Empty.
     shown : Calendar
         The year.
+    every : int
+        Months from one label to the next.
 
     Returns
     -------
@@ -160,7 +162,8 @@ def draw_calendar(axes: Any, shown: Calendar) -> Any:
     axes.set_xlim(extent[0], extent[1])
     months = [date(shown.first.year, m, 1) for m in range(1, 13)]
     axes.set_xticks([float(mpl.dates.date2num(m)) for m in months])
-    axes.set_xticklabels([MONTHS[m.month - 1][:3] for m in months], ha="left")
+    names = [MONTHS[m.month - 1][:3] if (m.month - 1) % every == 0 else "" for m in months]
+    axes.set_xticklabels(names, ha="left")
     axes.set_xlabel(f"day of the year {shown.first.year}")
     axes.set_ylabel("local clock time (h)")
     axes.yaxis.set_major_locator(mpl.ticker.MultipleLocator(2))

@@ -55,7 +55,10 @@ def unroll(points: Floats, base: Floats) -> Floats:
     count = np.bincount(which, minlength=len(edges) - 1)
     full = count > 0
     middle = np.stack(
-        [np.bincount(which, base[:, i], minlength=len(edges) - 1)[full] / count[full] for i in (0, 1)],
+        [
+            np.bincount(which, base[:, i], minlength=len(edges) - 1)[full] / count[full]
+            for i in (0, 1)
+        ],
         axis=1,
     )
     at = (np.bincount(which, t, minlength=len(edges) - 1) / np.maximum(count, 1))[full]
@@ -202,7 +205,9 @@ def focal_distance(evidence: Evidence) -> Floats:
         both = np.stack(given, axis=1).astype(float)
     else:
         with np.errstate(divide="ignore"):  # a mirror of radius R gathers at R / 2
-            both = 0.5 / np.asarray(data["curvature [1/m]"], float).reshape(len(evidence.facade), -1)
+            both = 0.5 / np.asarray(data["curvature [1/m]"], float).reshape(
+                len(evidence.facade), -1
+            )
     both = np.where((both > 0.0) & np.isfinite(both), both, np.inf)
     least = both.min(axis=1)
     return np.where(np.isfinite(least), least, np.nan)

@@ -30,7 +30,7 @@ def finding_figure(evidence: Evidence, finding: Finding) -> Figure:
     figure : Figure
         Parts a to d.
     """
-    figure = paper_figure(WIDTH_MM, 124.0)
+    figure = paper_figure(WIDTH_MM, 116.0)
     (where, behind), (when, day) = figure.subplots(2, 2)
     episode = finding.main
     place = np.array(peak_of(episode).place)
@@ -45,7 +45,7 @@ def finding_figure(evidence: Evidence, finding: Finding) -> Figure:
     behind.set_title("b  seen from the spot")
     mine = [e for e in evidence.year.episodes if e.season in set(finding.seasons)]
     shown = calendar(evidence, [finding.receiver], mine)
-    image = draw_calendar(when, shown)
+    image = draw_calendar(when, shown, every=2)
     colour_bar(figure, image, when, "worst reflected load on the receiver (W/m²)", **bar)
     when.set_title("c  when")
     draw_day(day, evidence, finding.receiver, episode)

@@ -302,11 +302,9 @@ def hours_plan(evidence: Evidence, criterion: str) -> Figure:
         A plan.
     """
     receivers = [r for r in flat_receivers(evidence) if criterion in r.minutes_over]
-    shown = _stack(receivers, [r.minutes_over[criterion] / 60.0 for r in receivers])
-    shown.image[shown.image <= 0.0] = np.nan
-    high = round_end(float(np.nanmax(np.nan_to_num(shown.image))))
-    norm = mpl.colors.Normalize(0.0, high)
-    return _map(evidence, shown, norm, f'hours over "{criterion}" (h in the year)')[0]
+    hours = [r.minutes_over[criterion] / 60.0 for r in receivers]
+    norm = mpl.colors.Normalize(0.0, round_end(max(float(h.max(initial=0.0)) for h in hours)))
+    return plan_map(evidence, receivers, hours, norm, f'hours over "{criterion}" (h in the year)')
 
 
 def image_plan(evidence: Evidence) -> Figure:
@@ -323,17 +321,60 @@ def image_plan(evidence: Evidence) -> Figure:
         A plan.
     """
     receivers = flat_receivers(evidence)
-    shown = _stack(receivers, [r.images.astype(float) for r in receivers])
-    shown.image[shown.image <= 0.0] = np.nan
-    most = int(np.nanmax(np.nan_to_num(shown.image)))
+    images = [r.images.astype(float) for r in receivers]
+    most = int(max(i.max(initial=0.0) for i in images))
     norm = mpl.colors.BoundaryNorm(np.arange(0.5, max(most, 2) + 1.0), 256)
     label = "most images of the sun in view at once (number)"
-    figure, axes = _map(evidence, shown, norm, label)
-    return figure
+    return plan_map(evidence, receivers, images, norm, label)
+
+
+def plan_map(
+    evidence: Evidence,
+    receivers: Sequence[ReceiverYear],
+    values: Sequence[Floats],
+    norm: Any,
+    label: str,
+    *,
+    cmap: str = LOAD_MAP,
+    extend: str = "neither",
+) -> Figure:
+    """Draw values on receivers that lie.
+
+    Parameters
+    ----------
+    evidence : Evidence
+        The year, for the lines of what stands there.
+    receivers : sequence of ReceiverYear
+        Which.
+    values : sequence of (n,) float
+        One array a receiver, nan or 0 left white.
+    norm : matplotlib norm
+        Scale of the colours.
+    label : str
+        What they show, with its unit.
+    cmap : str
+        Colour map.
+    extend : str
+        Ends of the scale that hold larger values.
+
+    Returns
+    -------
+    figure : Figure
+        A plan.
+    """
+    shown = _stack(receivers, values)
+    shown.image[shown.image == 0.0] = np.nan
+    return _map(evidence, shown, norm, label, extend=extend, cmap=cmap)[0]
 
 
 def _map(
-    evidence: Evidence, shown: Raster, norm: Any, label: str, *, extend: str = "neither"
+    evidence: Evidence,
+    shown: Raster,
+    norm: Any,
+    label: str,
+    *,
+    extend: str = "neither",
+    cmap: str = LOAD_MAP,
 ) -> tuple[Figure, Any]:
     frame = frame_of(evidence)
     figure = paper_figure(*plan_size(frame))
@@ -342,7 +383,7 @@ def _map(
         shown.image,
         origin="lower",
         extent=shown.extent,
-        cmap=LOAD_MAP,
+        cmap=cmap,
         norm=norm,
         interpolation="nearest",
     )

@@ -184,7 +184,7 @@ def draw_lines(axes: Any, segments: Floats, colour: str, width: float) -> None:
         segments.reshape(-1, 2),
         np.tile([mpl.path.Path.MOVETO, mpl.path.Path.LINETO], len(segments)),
     )
-    axes.add_patch(
+    axes.add_artist(  # not add_patch, which would measure each line
         mpl.patches.PathPatch(
             path,
             facecolor="none",

@@ -8,6 +8,7 @@ import matplotlib as mpl
 import numpy as np
 from matplotlib.figure import Figure
 
+from causticload.hazard.findings import Episode
 from causticload.light.bvh import build_tracer
 from causticload.output.colours import LOAD_MAP, map_colours, round_end
 from causticload.output.memo.evidence import Evidence
@@ -18,7 +19,6 @@ from causticload.output.memo.figures.style import (
     paper_figure,
 )
 from causticload.output.memo.findings import peak_of
-from causticload.hazard.findings import Episode
 from causticload.scene.model import Floats
 
 SKY = np.array([1.0, 1.0, 1.0])
