@@ -4,7 +4,7 @@ from __future__ import annotations
 
 import csv
 import io
-from collections.abc import Sequence
+from collections.abc import Callable, Sequence
 from dataclasses import asdict, dataclass
 from pathlib import Path
 from typing import Any, Literal
@@ -151,7 +151,7 @@ def _same_grid(a: ReceiverYear, b: ReceiverYear) -> bool:
 
 def _settings(a: Evidence, b: Evidence) -> tuple[str, ...]:
     """Names of what differs in the two runs besides the model."""
-    parts = {
+    parts: dict[str, Callable[[Evidence], Any]] = {
         "site": lambda e: e.summary["site"],
         "year": lambda e: {k: e.summary["year"][k] for k in ("year", "step_minutes", "day_stride")},
         "sky": lambda e: asdict(e.year.study.sky),

@@ -137,19 +137,12 @@ def count_text(comparison: Comparison) -> str:
 
 
 def _row(c: Change) -> tuple[str, ...]:
-    def told(values: tuple[float | None, float | None], form: str) -> tuple[str, str]:
-        a, b = ("" if v is None else format(v, form) for v in values)
-        return a, b
-
-    b, a = c.before, c.after
-    return (
-        c.receiver,
-        c.criterion,
-        phrases.FATES[c.fate],
-        *told((b and b.peak, a and a.peak), ",.0f"),
-        *told((b and b.days, a and a.days), ".0f"),
-        *told((b and b.place_minutes / 60.0, a and a.place_minutes / 60.0), ".1f"),
-    )
+    figures: list[str] = []
+    shown = ((",.0f", 1.0, "peak"), (".0f", 1.0, "days"), (".1f", 60.0, "place_minutes"))
+    for form, per, name in shown:
+        for side in (c.before, c.after):
+            figures.append("" if side is None else format(getattr(side, name) / per, form))
+    return (c.receiver, c.criterion, phrases.FATES[c.fate], *figures)
 
 
 def change_plan(comparison: Comparison) -> Figure:

@@ -123,7 +123,7 @@ STYLES = {
 }
 
 
-class _Place(Flowable):  # type: ignore[misc]
+class _Place(Flowable):
     """Keeps room for a figure and remembers where that is."""
 
     def __init__(self, key: str, height: float, places: dict[str, Any]) -> None:
@@ -140,7 +140,7 @@ class _Place(Flowable):  # type: ignore[misc]
         self.places[self.key] = (self.canv.getPageNumber() - 1, x, y)
 
 
-class _Pages(BaseDocTemplate):  # type: ignore[misc]
+class _Pages(BaseDocTemplate):
     """Pages with a foot, an outline and a table of contents."""
 
     def __init__(self, out: io.BytesIO, memo: Memo) -> None:

@@ -10,6 +10,7 @@ from zoneinfo import ZoneInfo
 
 import matplotlib as mpl
 import numpy as np
+from matplotlib.dates import date2num
 from matplotlib.figure import Figure
 from numpy.typing import NDArray
 
@@ -87,7 +88,7 @@ def calendar(evidence: Evidence, receivers: Sequence[str], episodes: Sequence[Ep
                 [_offset(e.start, zone, shift) for e, shift in zip(mine, own, strict=True)]
             )
             begin = _bins(np.array([e.start for e in mine]), offsets, minutes, bins)
-            last = np.array([e.end for e in mine]) - np.timedelta64(1, "s")
+            last = np.array([e.end - np.timedelta64(1, "s") for e in mine])
             for a, b in zip(begin, _bins(last, offsets, minutes, bins), strict=True):
                 over[d, a : max(b, a) + 1] = True
     return Calendar(first, load, over, minutes)
@@ -123,7 +124,7 @@ def draw_calendar(axes: Any, shown: Calendar, *, every: int = 1) -> Any:
     image : matplotlib image
         For a colour bar.
     """
-    start = float(mpl.dates.date2num(shown.first))
+    start = float(date2num(shown.first))
     extent = (start, start + len(shown.load), 0.0, 24.0)
     load = shown.load.T
     up = np.where(np.isnan(load), np.nan, 1.0)
@@ -153,7 +154,7 @@ def draw_calendar(axes: Any, shown: Calendar, *, every: int = 1) -> Any:
         axes.contourf(x, y, mask, [0.5, 1.5], colors="none", hatches=["////"])
         axes.contour(x, y, mask, [0.5], colors="white", linewidths=1.4)
         axes.contour(x, y, mask, [0.5], colors="black", linewidths=0.6)
-    sunny = np.isfinite(shown.load).any(axis=0).nonzero()[0]
+    sunny = np.flatnonzero(np.isfinite(shown.load).any(axis=0))
     if len(sunny):
         axes.set_ylim(
             max(0.0, np.floor(sunny[0] * shown.minutes / 60.0)),
@@ -161,7 +162,7 @@ def draw_calendar(axes: Any, shown: Calendar, *, every: int = 1) -> Any:
         )
     axes.set_xlim(extent[0], extent[1])
     months = [date(shown.first.year, m, 1) for m in range(1, 13)]
-    axes.set_xticks([float(mpl.dates.date2num(m)) for m in months])
+    axes.set_xticks([float(date2num(m)) for m in months])
     names = [MONTHS[m.month - 1][:3] if (m.month - 1) % every == 0 else "" for m in months]
     axes.set_xticklabels(names, ha="left")
     axes.set_xlabel(f"day of the year {shown.first.year}")
@@ -222,16 +223,16 @@ def sun_path(evidence: Evidence) -> Figure:
         elevation.append(row["elevation"])
         load.append(worst)
         over.append(hot)
-    a, e, w, hot = (np.concatenate(v) for v in (azimuth, elevation, load, over))
+    a, up, w, hot = (np.concatenate(v) for v in (azimuth, elevation, load, over))
     south = evidence.year.study.site.latitude < 0.0
     a = _unwrapped(a, south=south)
-    axes.scatter(a, e, s=1.5, color="0.82", rasterized=True, linewidths=0)
+    axes.scatter(a, up, s=1.5, color="0.82", rasterized=True, linewidths=0)
     order = np.argsort(w, kind="stable")
     order = order[hot[order]]
     norm, extend = load_scale(w[order])
     dots = axes.scatter(
         a[order],
-        e[order],
+        up[order],
         c=w[order],
         s=5.0,
         cmap=LOAD_MAP,
@@ -244,7 +245,7 @@ def sun_path(evidence: Evidence) -> Figure:
     colour_bar(figure, dots, axes, label, extend=extend)
     axes.set_xlabel("azimuth of the sun, clockwise from true north (degrees)")
     axes.set_ylabel("elevation of the sun (degrees)")
-    axes.set_ylim(0.0, min(90.0, float(np.ceil(e.max() / 10.0) * 10.0 + 5.0)))
+    axes.set_ylim(0.0, min(90.0, float(np.ceil(up.max() / 10.0) * 10.0 + 5.0)))
     axes.xaxis.set_major_locator(mpl.ticker.MultipleLocator(30))
     axes.xaxis.set_major_formatter(lambda x, _: f"{x % 360:.0f}")
     return figure

@@ -158,7 +158,7 @@ def colour_bar(figure: Any, shown: Any, axes: Any, label: str, **options: Any) -
     bar.set_label(label)
     norm = shown.norm
     if isinstance(norm, mpl.colors.PowerNorm):
-        ticks = [share * norm.vmax for share in (0.0, 0.05, 0.25, 0.5, 1.0)]
+        ticks = [share * float(norm.vmax or 0.0) for share in (0.0, 0.05, 0.25, 0.5, 1.0)]
         bar.set_ticks(ticks, labels=[f"{t:,.0f}" for t in ticks])
         bar.minorticks_off()
     return bar
