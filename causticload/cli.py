@@ -25,6 +25,10 @@ EPILOGS = {
     "year": "examples:\n"
     "  causticload year tower.toml --out tower-year\n"
     "  causticload year tower.toml --out tower-year --resume",
+    "memo": "examples:\n"
+    "  causticload memo tower-year\n"
+    "  causticload memo tower-year --format docx,pdf",
+    "compare": "example:\n  causticload compare tower-year tower-flat-year --out difference",
     "install-addon": "example:\n  causticload install-addon blender",
     "worker": "The protocol is described in DEVELOPERS.md, with a client.",
     "finishes": "example:\n  causticload finishes --plot finishes.png",
@@ -74,6 +78,16 @@ def _parser() -> argparse.ArgumentParser:
     year.add_argument(
         "--fail-over", action="store_true", help="leave with 3 if a criterion is exceeded"
     )
+
+    memo = add("memo", "Write the memo of a year from its result folder.", study=False)
+    memo.add_argument("folder", metavar="DIR", type=Path, help="result folder of a year")
+    memo.add_argument(
+        "--format", metavar="LIST", default="docx,pdf,html", help="of docx, pdf, html (all)"
+    )
+    compare = add("compare", "Tell what a change of design did to a year.", study=False)
+    compare.add_argument("before", metavar="DIR_A", type=Path, help="result folder before")
+    compare.add_argument("after", metavar="DIR_B", type=Path, help="result folder after")
+    compare.add_argument("--out", type=Path, metavar="DIR", help="write meshes and a memo")
 
     finishes = add("finishes", "List the built-in finishes with their sources.", study=False)
     finishes.add_argument("--plot", type=Path, metavar="PNG", help="draw reflectance over angle")
@@ -291,6 +305,29 @@ class _Bar:
         self.close()
 
 
+def _memo(options: argparse.Namespace) -> int:
+    from causticload.output.memo import write_memo
+
+    paths = write_memo(options.folder, formats=options.format.split(","))
+    _print(
+        options,
+        {"files": [str(p) for p in paths]},
+        lambda: "Written:\n" + "\n".join(f"  {p}" for p in paths),
+    )
+    return DONE
+
+
+def _compare(options: argparse.Namespace) -> int:
+    from causticload.output.compare import compare_years, comparison_record, save_comparison
+    from causticload.output.text import summarise_comparison
+
+    comparison = compare_years(options.before, options.after)
+    if options.out:
+        save_comparison(comparison, options.out)
+    _print(options, comparison_record(comparison), lambda: summarise_comparison(comparison))
+    return DONE
+
+
 def _finishes(options: argparse.Namespace) -> int:
     from causticload.optics import list_finishes
     from causticload.output.text import summarise_finishes
@@ -327,6 +364,8 @@ _COMMANDS: dict[str, Callable[[argparse.Namespace], int]] = {
     "inspect": _inspect,
     "instant": _instant,
     "year": _year,
+    "memo": _memo,
+    "compare": _compare,
     "finishes": _finishes,
     "install-addon": _install_addon,
     "worker": _worker,

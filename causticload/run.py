@@ -18,7 +18,7 @@ from causticload.hazard.findings import Episode, Finding, Season
 from causticload.hazard.further import SurfaceHistory, look_further
 from causticload.hazard.observers import EyePoints, EyeWatch, merge_eyes, place_eyes
 from causticload.hazard.peaks import SunState, look_closely
-from causticload.hazard.seasons import make_seasons
+from causticload.hazard.seasons import make_seasons, worth_a_close_look
 from causticload.light.bvh import Engine
 from causticload.light.count import RayCount, count_spot
 from causticload.light.field import solve_field
@@ -426,7 +426,7 @@ def solve_year(
     episodes, seasons = make_seasons(
         over["episodes"], zone=study.site.timezone, day_stride=study.year.day_stride
     )
-    reported = [s.worst for s in seasons[:checks]]
+    reported = [s.worst for s in worth_a_close_look(seasons, checks)]
     episodes = _check_peaks(project, episodes, reported, report, threads, stop)
     findings, histories = _look_further(project, plan, episodes, seasons, report, threads, stop)
     contribution = np.zeros(len(project.scene.panels))

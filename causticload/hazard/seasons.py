@@ -39,6 +39,34 @@ def severity(item: Episode | Season) -> tuple[float, ...]:
     return (people, -minutes, -item.peak)
 
 
+def worth_a_close_look(seasons: Sequence[Season], most: int) -> list[Season]:
+    """Choose the seasons whose worst peak is looked at closely.
+
+    The strongest of each receiver and sort of harm comes first, so that a place with many
+    seasons does not leave another without one; then the rest, worst first.
+
+    Parameters
+    ----------
+    seasons : sequence of Season
+        Worst first.
+    most : int
+        How many, at least 0.
+
+    Returns
+    -------
+    chosen : list of Season
+        At most ``most``.
+    """
+    strongest: dict[tuple[str, str], Season] = {}
+    for s in seasons:
+        place = (s.receiver, s.protects)
+        if place not in strongest or s.peak > strongest[place].peak:
+            strongest[place] = s
+    first = sorted(strongest.values(), key=severity)
+    taken = {s.number for s in first}
+    return [*first, *(s for s in seasons if s.number not in taken)][:most]
+
+
 def make_seasons(
     episodes: Sequence[Episode], *, zone: str, day_stride: int
 ) -> tuple[list[Episode], list[Season]]:
@@ -140,7 +168,7 @@ def _season(group: Sequence[Episode], tz: ZoneInfo, day_stride: int) -> Season:
     by_day: dict[date, list[Episode]] = {}
     for e in group:
         by_day.setdefault(e.day, []).append(e)
-    minutes = {d: _union_minutes(each) for d, each in by_day.items()}
+    minutes = {d: union_minutes(each) for d, each in by_day.items()}
     starts = [_clock(e.start, tz) for e in group]
     ends = [_clock(e.end, tz) for e in group]
     return Season(
@@ -159,8 +187,19 @@ def _season(group: Sequence[Episode], tz: ZoneInfo, day_stride: int) -> Season:
     )
 
 
-def _union_minutes(episodes: Sequence[Episode]) -> float:
-    """Minutes of a day in which at least one of the episodes is on."""
+def union_minutes(episodes: Sequence[Episode]) -> float:
+    """Minutes of a day in which at least one of the episodes is on.
+
+    Parameters
+    ----------
+    episodes : sequence of Episode
+        Episodes of one day.
+
+    Returns
+    -------
+    minutes : float
+        Time that several share counts once. [min]
+    """
     total, reached = 0.0, -np.inf
     for begin, end in sorted((_minutes(e.start), _minutes(e.end)) for e in episodes):
         total += max(0.0, end - max(begin, reached))

@@ -4,6 +4,7 @@ from __future__ import annotations
 
 import json
 from collections.abc import Callable
+from datetime import UTC, datetime
 from importlib.metadata import PackageNotFoundError, version
 from pathlib import Path
 from typing import Any
@@ -279,6 +280,7 @@ def _save_panels(scene: Scene, path: Path) -> None:
 def _full_summary(year: Year) -> dict[str, Any]:
     return {
         "schema_version": SCHEMA,
+        "finished": datetime.now(UTC).isoformat(timespec="seconds"),
         **year.summary,
         "inputs_sha256": input_hashes(year.study),
         "libraries": {name: _version(name) for name in LIBRARIES},
@@ -416,20 +418,19 @@ def _read_receivers(folder: Path, summary: dict[str, Any]) -> dict[str, Receiver
 
 def _read_chart_rows(folder: Path) -> list[dict[str, Any]]:
     with np.load(folder / "chart.npz") as file:
-        ends = np.cumsum(file["steps"])
-        rows = []
-        for k, end in enumerate(ends):
-            part = slice(int(end - file["steps"][k]), int(end))
-            rows.append(
-                {
-                    "date": str(file["dates"][k]),
-                    "stands_for_days": float(file["stands_for_days"][k]),
-                    "times": file["times"][part],
-                    "azimuth": file["azimuth"][part],
-                    "elevation": file["elevation"][part],
-                    "worst": {
-                        str(n): file["worst"][part, i] for i, n in enumerate(file["receivers"])
-                    },
-                }
-            )
+        kept = {name: file[name] for name in file.files}  # each access would unpack it again
+    ends = np.cumsum(kept["steps"])
+    rows = []
+    for k, end in enumerate(ends):
+        part = slice(int(end - kept["steps"][k]), int(end))
+        rows.append(
+            {
+                "date": str(kept["dates"][k]),
+                "stands_for_days": float(kept["stands_for_days"][k]),
+                "times": kept["times"][part],
+                "azimuth": kept["azimuth"][part],
+                "elevation": kept["elevation"][part],
+                "worst": {str(n): kept["worst"][part, i] for i, n in enumerate(kept["receivers"])},
+            }
+        )
     return rows

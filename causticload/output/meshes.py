@@ -193,11 +193,24 @@ def coloured_cells(
     face_colours = np.concatenate(
         [colours[draw], np.broadcast_to(np.array(MARK, np.uint8), (len(marks), 4))]
     )
-    return _quad_mesh(quads, face_colours)
+    return quad_mesh(quads, face_colours)
 
 
-def _quad_mesh(quads: Floats, colours: Colours) -> trimesh.Trimesh:
-    """Quadrilaterals (n, 4, 3) as two triangles each, every corner with its face's colour."""
+def quad_mesh(quads: Floats, colours: Colours) -> trimesh.Trimesh:
+    """Turn quadrilaterals into two triangles each, every corner with its face's colour.
+
+    Parameters
+    ----------
+    quads : (n, 4, 3) float
+        Corners in order. [m]
+    colours : (n, 4) uint8
+        One a quadrilateral.
+
+    Returns
+    -------
+    mesh : trimesh.Trimesh
+        4 n vertices.
+    """
     n = len(quads)
     faces = (np.arange(n)[:, None, None] * 4 + np.array([[0, 1, 2], [0, 2, 3]])).reshape(-1, 3)
     return trimesh.Trimesh(

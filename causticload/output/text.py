@@ -4,7 +4,7 @@ from __future__ import annotations
 
 from collections.abc import Iterable, Mapping, Sequence
 from textwrap import fill
-from typing import Any
+from typing import TYPE_CHECKING, Any
 
 import numpy as np
 
@@ -13,6 +13,9 @@ from causticload.hazard.eyes import EYE_CLASS_WORDS, EyeClass
 from causticload.hazard.findings import Episode, Finding, ObserverFinding, PeakCheck, Season
 from causticload.output import words
 from causticload.output.results import Instant, Year
+
+if TYPE_CHECKING:
+    from causticload.output.compare import Comparison
 
 WIDTH = 100
 MOST_SEASONS = 8
@@ -317,6 +320,39 @@ def summarise_instant(instant: Instant) -> str:
     )
     lines += _listed("Assumed", instant.assumed)
     lines += _listed("Cautions", cautions_for({"people: skin", "people: eyes", "things"}))
+    return "\n".join(lines)
+
+
+def summarise_comparison(comparison: Comparison) -> str:
+    """Say what a change of design did.
+
+    Parameters
+    ----------
+    comparison : Comparison
+        Two years.
+
+    Returns
+    -------
+    text : str
+        About 100 columns wide.
+    """
+    from causticload.output.memo.change import count_text
+
+    c = comparison
+    lines = [f"{c.before.summary['title']} and {c.after.summary['title']}", ""]
+    lines.append(_wrap(count_text(c), "") if c.changes else words.NO_EXCEEDANCE)
+    width = max([len(f"{x.receiver}, {x.criterion}") for x in c.changes], default=0)
+    for x in c.changes:
+        peaks = " -> ".join(
+            words.load(side.peak) if side else "not over it" for side in (x.before, x.after)
+        )
+        name = f"{x.receiver}, {x.criterion}"
+        lines.append(f"  {x.fate:<7} {name:<{width}}  grid peak {peaks}")
+    if c.settings:
+        lines += ["", f"Not the same in the two runs: {', '.join(c.settings)}."]
+    if c.unlike:
+        lines += ["", _wrap(f"Not compared place by place: {', '.join(c.unlike)}.", "")]
+    lines += _listed("Cautions", cautions_for(()))
     return "\n".join(lines)
 
 
