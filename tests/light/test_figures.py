@@ -14,7 +14,9 @@ from causticload.light.field import solve_field
 from causticload.light.points import solve_points
 from causticload.light.waves import ripple
 from causticload.optics.finish import Finish, Lobe, Reflection
+from causticload.optics.resolve import resolve_finish
 from causticload.sky.disc import SunDisc
+from causticload.study.model import FinishSpec
 
 SUN = 4.6505e-3
 UP = np.array([0.0, 0.0, 1.0])
@@ -362,3 +364,25 @@ def test_a_brushed_mirror_shows_one_image_and_sends_on_all_light(tmp_path):
     assert abs(balance(field)) < 0.005
     assert field.ledger["receivers"] == pytest.approx(s[2], rel=0.005)
     assert field.images.max() == 1
+
+
+def test_range_of_an_unknown_law_comes_with_the_load(tmp_path):
+    # Two figures of a data sheet: what the closure leaves open at 60 degrees is its own figure.
+    spec = FinishSpec(
+        name="sheet", solar_reflectance=0.33, visible_reflectance=0.16, angular="coated glass"
+    )
+    finish = resolve_finish("sheet", {"sheet": spec})
+    lit = figured(tmp_path, [sheet(1, 1)], {"tilt_mrad": 0.0}, finish=finish, disc=SunDisc())
+    s = toward(180, 30)
+    far = np.array([[-s[0], -s[1], s[2]]]) * 10.0
+    light = loads(lit, far, s)
+    low, high = light.limits(0)
+    theta = np.radians([60.0])
+    R, least, most = (
+        f(theta)[:, 0].mean(axis=(0, 1))[0] for f in (finish.reflectance, finish.low, finish.high)
+    )
+    assert low < light.load[0] < high
+    assert (low / light.load[0], high / light.load[0]) == pytest.approx((least / R, most / R), 0.01)
+    known = figured(tmp_path, [sheet(1, 1)], {"tilt_mrad": 0.0}, finish=table_finish(0.3))
+    light = loads(known, far, s)
+    assert light.limits(0) == pytest.approx((light.load[0], light.load[0]))
