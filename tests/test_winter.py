@@ -75,7 +75,7 @@ def test_one_panes_light_is_what_its_curvature_says(winter):
         t /= np.linalg.norm(t)
         axes = np.array([[t @ w, t @ h], [-(t @ h), t @ w]])
         theta = np.arccos(n @ s)
-        place = int(round(np.degrees(theta) * 4))
+        place = round(np.degrees(theta) * 4)
         sheet = lit.sheets.first[scene.panels.surface[p]]
         for k in range(2):
             xx, xy, yy = bend[row + k]

@@ -182,6 +182,8 @@ def test_mean_over_phases_is_what_many_panes_show(tmp_path):
         loads(figured(tmp_path, [sheet(2, 2)], {**settings, "seed": seed}), points).load
         for seed in range(12)
     ]
+    even = mean.under(mean.scene, SunDisc("uniform"))
+    assert even.close.disc == even.disc == SunDisc("uniform")
     got = loads(mean.follower, points).load
     assert got == pytest.approx(loads(mean, points).load)  # a close look follows the wave
     grid = field_at(mean, tmp_path, settings)
@@ -263,6 +265,25 @@ def test_grid_agrees_with_points_off_panes_that_bow_apart(tmp_path):
     assert field.load[top] == pytest.approx(loads(lit, cell, s).load.mean(), rel=0.02)
     assert field.images[top] >= 2
     assert field.load.sum() * 0.04 == pytest.approx(0.4 * 2.0 * s[2], rel=0.02)  # all but kinks
+
+
+def test_grid_follows_a_wave_where_that_is_cheap(tmp_path):
+    s = toward(180, 70)
+    far = np.array([-s[0], -s[1], s[2]]) * 8.0
+    settings = {"roller_wave_mm": 0.1, "roller_pitch_mm": 250, "roller_along": "height"}
+    lit = figured(
+        tmp_path, [sheet(1.5, 1)], settings, receiver=sheet(2.4, 2, far[2], far[:2])[::-1],
+        spacing=0.05,
+    )  # fmt: skip
+    assert lit.follower is None
+    field = solve_field(lit, sun_direction=s, sun_radius=SUN)
+    # Strips all alike, as narrow as the cells, fall on the samples in step: up to 1 %.
+    assert abs(balance(field)) < 0.015
+    inner = np.flatnonzero(np.abs(lit.points - far)[:, :2].max(axis=1) < 0.35)
+    points = loads(lit, lit.points[inner], s).load
+    assert np.ptp(points) > 0.25 * points.mean()  # bands of the wave
+    # A cell's mean over 50 mm of bands 250 mm long, against its middle.
+    assert field.load[inner] == pytest.approx(points, abs=0.04 * points.mean())
 
 
 def test_second_reflection_off_panes_that_bow_apart(tmp_path):
