@@ -23,6 +23,7 @@ from causticload.light.bvh import Engine
 from causticload.light.count import RayCount, count_spot
 from causticload.light.field import solve_field
 from causticload.light.focus import focus_share
+from causticload.light.points import load_limits
 from causticload.light.prepare import LitScene, prepare
 from causticload.light.tally import Accumulator, direct_factor, merge_loads
 from causticload.light.year import DayResult, run_day, run_days
@@ -249,6 +250,16 @@ def solve_instant(
         def direct(index: Any = index) -> Floats:
             return state.beam * direct_factor(lit, state.direction, index)
 
+        def limits(index: Any = index, spacing: float = surface.spacing) -> tuple[float, float]:
+            return load_limits(
+                lit,
+                sun_direction=state.direction,
+                sun_radius=state.radius,
+                point=int(index[field.load[index].argmax()]),
+                spacing_m=spacing,
+                bounced=field.bounced,
+            )
+
         receivers[surface.name] = ReceiverInstant(
             name=surface.name,
             kind=surface.kind,
@@ -259,6 +270,7 @@ def solve_instant(
             images=field.images[index],
             first=int(index[0]),
             _direct=direct,
+            _limits=limits,
         )
     return Instant(
         study=project.study,

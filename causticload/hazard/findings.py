@@ -58,6 +58,8 @@ class PeakCheck:
     count_error: float  # W/m², standard error of the count
     rays: int
     agrees: bool  # within three standard errors
+    reflected_low: float | None = None  # W/m², with the least reflectance that data leave open
+    reflected_high: float | None = None  # W/m², with the largest
 
 
 @dataclass(frozen=True, kw_only=True)

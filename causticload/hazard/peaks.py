@@ -134,6 +134,7 @@ def look_closely(
     bounced = spot.second(sun)
     place, light, width = _sharpen(spot, sun, place, bounced, light)
     reflected = float(light.load.max()) * sun.beam
+    low, high = light.limits(int(light.load.argmax()))
     check = _count(spot, sun, place, bounced, seed)
     direct, diffuse = _plain_sun(spot, sun, place)
     scene = lit.scene
@@ -142,6 +143,8 @@ def look_closely(
         time=time,
         place=_tuple(place + scene.origin),
         reflected=reflected,
+        reflected_low=low * sun.beam,
+        reflected_high=high * sun.beam,
         total=reflected + direct + diffuse,
         images=int(light.images[light.load.argmax()]),
         width=width,

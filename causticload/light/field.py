@@ -124,6 +124,7 @@ class Bounced(NamedTuple):
     sheet: Ints  # (k,) row of the sun's discs that blurs them
     kept: Floats  # (k,) share of their power that stays in the mirror direction
     shows: Bools  # (k,) they count as images of the sun
+    mirror: Ints  # (k,) row of the tables of the second mirror
 
 
 class _Landing(NamedTuple):
@@ -653,7 +654,7 @@ class _Walk:
         met[straddles, :4], met[:, 4:8], met[straddles, 8:] = code[straddles], under, spread
         self._settle(after, before, met, np.ones(len(code), bool), factor, ring)
         self.field.bounced.append(
-            Bounced(after, before, generation.tubes, ring, onward, self.lit.shows[own])
+            Bounced(after, before, generation.tubes, ring, onward, self.lit.shows[own], b.sheet)
         )
 
 

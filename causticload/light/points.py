@@ -45,6 +45,8 @@ class Parts(NamedTuple):
     distance: Floats  # (q,) path from the first reflection [m]
     whole: Bools  # (q,) the middle of the sun's image is in view within this tube
     second: Bools  # (q,) by way of a second reflection
+    low: Floats  # (q,) share of the point's load at the least reflectance that is left open [1]
+    high: Floats  # (q,) the same at the largest
 
 
 @dataclass
@@ -54,6 +56,11 @@ class PointLight:
     load: Floats  # (p,) [1]
     images: Ints  # (p,)
     parts: Parts
+
+    def limits(self, point: int) -> tuple[float, float]:
+        """Return the least and largest load that unknown angular laws leave open at a point."""
+        mine = self.parts.point == point
+        return float(self.parts.low[mine].sum()), float(self.parts.high[mine].sum())
 
 
 @njit(cache=True, nogil=True, error_model="numpy")
@@ -322,7 +329,30 @@ class _Question:
             kept,
             bounced.sheet[near],
             bounced.shows[near],
+            bounced.mirror[near],
         )
+
+    def _left_open(
+        self, beams: Beams, sources: Beams | None, tubes: Tubes, mirror: Ints | None
+    ) -> tuple[Floats, Floats]:
+        """Least and largest reflectance of each beam's mirrors over what was taken, (n,) each."""
+        sheets = self.lit.sheets
+        first = beams if sources is None else sources
+        # A mirror turns light by pi less twice its angle of incidence.
+        theta = [0.5 * np.arccos(np.clip(first.frame[:, 0] @ self.s, -1.0, 1.0))]
+        rows = [tubes.sheet]
+        if mirror is not None:
+            turned = np.einsum("ni,ni->n", first.frame[:, 0], beams.frame[:, 0])
+            theta.append(0.5 * np.arccos(np.clip(-turned, -1.0, 1.0)))
+            rows.append(mirror)
+        found = []
+        for table in (sheets.low, sheets.high):
+            factor = np.ones(len(tubes.facet))
+            for angle, row in zip(theta, rows, strict=True):
+                place = np.rint(angle * (2.0 / np.pi) * (table.shape[-1] - 1)).astype(np.int64)
+                factor *= table[row, 0, place]
+            found.append(factor)
+        return found[0], found[1]
 
     def _gather(
         self,
@@ -332,6 +362,7 @@ class _Question:
         kept: Floats,
         ring: Ints,
         shows: Bools,
+        mirror: Ints | None = None,
     ) -> Parts:
         lit = self.lit
         factor = beams.solar * kept
@@ -355,6 +386,7 @@ class _Question:
         tube, point, load, X, whole = tube[free], point[free], load[free], X[free], whole[free]
         solar = beams.solar[tube]
         visible = beams.power[tube, 2] + beams.power[tube, 3]
+        low, high = self._left_open(beams, sources, tubes, mirror)
         crossing = tubes.area * np.abs(lit.F.face_normal[tubes.facet] @ self.s)
         way = X - self.P[point]
         length = np.linalg.norm(way, axis=1)
@@ -368,4 +400,61 @@ class _Question:
             distance=length + beams.longest[tube],
             whole=whole & shows[tube],
             second=np.full(len(tube), sources is not None),
+            low=load * low[tube],
+            high=load * high[tube],
         )
+
+
+def load_limits(
+    lit: LitScene,
+    *,
+    sun_direction: Floats,
+    sun_radius: float,
+    point: int,
+    spacing_m: float,
+    bounced: list[Bounced],
+) -> tuple[float, float]:
+    """Find how far unknown angular laws leave open the load of one receiver point.
+
+    Parameters
+    ----------
+    lit : LitScene
+        The prepared scene.
+    sun_direction : (3,) float
+        Unit vector to the sun, scene frame.
+    sun_radius : float
+        Angular radius of the sun. [rad]
+    point : int
+        Number of the receiver point.
+    spacing_m : float
+        Size of its cell. [m]
+    bounced : list of Bounced
+        Beams after a second reflection.
+
+    Returns
+    -------
+    low, high : float
+        Factors on the load; 1 and 1 where all laws are known. The range is that of unpolarised
+        light, at each reflection. [1]
+    """
+    if (lit.sheets.low == 1.0).all() and (lit.sheets.high == 1.0).all():
+        return 1.0, 1.0
+    n = lit.point_normals[point]
+    u = np.cross(n, [0.0, 0.0, 1.0] if abs(n[2]) < 0.9 else [1.0, 0.0, 0.0])
+    u /= np.linalg.norm(u)
+    step = spacing_m / 3.0 * np.array([-1.0, 0.0, 1.0])
+    a, b = (v.ravel()[:, None] for v in np.meshgrid(step, step))
+    P = lit.points[point] + a * u + b * np.cross(n, u)
+    parts = solve_points(
+        lit,
+        sun_direction=sun_direction,
+        sun_radius=sun_radius,
+        points=P,
+        normals=np.broadcast_to(n, P.shape),
+        bounced=bounced,
+        follow_waves=False,
+    ).parts
+    total = float(parts.load.sum())
+    if total <= 0.0:
+        return 1.0, 1.0
+    return float(parts.low.sum()) / total, float(parts.high.sum()) / total

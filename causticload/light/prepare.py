@@ -11,7 +11,7 @@ import numpy as np
 from causticload.light.bvh import Engine, Tracer, build_tracer
 from causticload.light.cut import cut_to_figure
 from causticload.light.facets import Facets, make_facets
-from causticload.light.sheets import Sheets, bow_apart, lay_sheets
+from causticload.light.sheets import Sheets, bow_apart, lay_sheets, panes_of
 from causticload.light.splat import Grids, make_grids
 from causticload.light.targets import Meanings, make_meanings
 from causticload.light.tubes import Tubes, whole_facets
@@ -55,6 +55,11 @@ class LitScene:
     def close(self) -> LitScene:
         """The scene for a close look: every roller wave is followed with its own phase."""
         return self.follower or self
+
+    def under(self, scene: Scene, disc: SunDisc) -> LitScene:
+        """Return the same scene under another north and another sun's face."""
+        follower = self.follower.under(scene, disc) if self.follower else None
+        return replace(self, scene=scene, disc=disc, follower=follower, _rings={})
 
     def rings(self, sun_radius: float, count: int | None = None) -> tuple[Floats, Floats]:
         """Return the sun as each sheet blurs it: tangents of disc radii and shares, (k, r).
@@ -161,13 +166,23 @@ def _reflecting(scene: Scene, sheets: Sheets, *, cut_waves: bool) -> dict[str, A
 
 
 def _say_panes(scene: Scene, finishes: Sequence[Finish]) -> tuple[str, ...]:
-    """Surfaces whose figure parts the panes though their finish does not."""
+    """Surfaces whose figure and finish do not speak of the same panes."""
     said = []
+    g = scene.figures
     for i, surface in enumerate(scene.surfaces):
-        if len(finishes[i].lobes) == 1 and bow_apart(scene, i, follow_waves=False):
+        if g is None or not bow_apart(scene, i, follow_waves=False):
+            continue
+        panes = int(g.count[g.panel[panes_of(g, scene, i)[0]]])
+        lobes = len(finishes[i].lobes)
+        if lobes == 1:
             said.append(
                 f"{surface.name}: its figure bows panes apart but its finish is known as one "
                 "surface only, so all its light is given to the outer pane; name the panes in "
                 "the finish (pane_count or panes) to part them."
+            )
+        elif lobes != panes:
+            said.append(
+                f"{surface.name}: its figure is of {panes} panes, its finish of {lobes}: the "
+                "inner ones bow as the figure's last."
             )
     return tuple(said)

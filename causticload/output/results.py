@@ -41,6 +41,16 @@ class ReceiverInstant:
     images: Ints  # (n,) reflected images of the sun in view
     first: int  # number of the receiver's first point in the scene
     _direct: Any = None  # callable that gives (n,) W/m² when first asked
+    _limits: Any = (1.0, 1.0)  # or callable that gives both factors when first asked
+
+    @property
+    def peak_limits(self) -> tuple[float, float]:
+        """Least and largest load at the hottest point that unknown angular laws leave. [W/m²]"""
+        if callable(self._limits):
+            self._limits = self._limits()
+        low, high = self._limits
+        peak = float(self.reflected.max(initial=0.0))
+        return low * peak, high * peak
 
     @property
     def direct(self) -> Floats:

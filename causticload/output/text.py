@@ -241,12 +241,16 @@ def describe_check(check: PeakCheck) -> str:
         if check.agrees
         else "which DISAGREE by more than three standard errors: do not rely on this peak"
     )
+    left = ""
+    if check.reflected_low is not None and check.reflected_high is not None:
+        left = _left_open(check.reflected, check.reflected_low, check.reflected_high)
+        left = f" It may be {left}." if left else ""
     return (
         f"Reflected light {words.load(check.reflected)} with {check.images} "
         f"image{'s' if check.images != 1 else ''} of the sun in view. Over a disc of "
         f"{1000 * check.disc_radius:.0f} mm radius ray tubes give {check.disc_mean:,.0f} and "
         f"{check.rays:,} random rays {check.count_mean:,.0f} ± {check.count_error:,.0f} W/m², "
-        f"{verdict}."
+        f"{verdict}.{left}"
     )
 
 
@@ -305,6 +309,9 @@ def summarise_instant(instant: Instant) -> str:
             f"  {r.name:<{width}}  {words.load(float(r.reflected[top])):>12}  "
             f"{r.reflected[top] / sun.beam:5.2f} suns  {r.images[top]} images  at {where}"
         )
+        left = _left_open(float(r.reflected[top]), *r.peak_limits)
+        if left:
+            lines.append(f"  {'':<{width}}  {left}")
     L = instant.ledger
     taken = L["intercepted"]
     if taken > 0.0:
@@ -409,6 +416,16 @@ def summarise_inspect(report: Mapping[str, Any]) -> str:
     lines += _listed("Assumed", report.get("assumed", []))
     lines += ["", f"Rays will be traced by {report.get('tracer', 'nothing yet')}."]
     return "\n".join(lines)
+
+
+def _left_open(load: float, low: float, high: float) -> str:
+    """Say what an unknown angular law leaves open; nothing where that is nothing."""
+    if not high - low > 0.01 * load:
+        return ""
+    return (
+        f"{low:,.0f} to {high:,.0f} W/m² by what the data leave open of reflectance at slanting "
+        "angles"
+    )
 
 
 def _figure_line(f: Mapping[str, Any]) -> str:

@@ -115,7 +115,9 @@ def _solve(corners: tuple[tuple[float, float], ...], aspect: float) -> Plate:
         + 2.0 * (b[1][:, None] * px + c * b[2][:, None] * py)
         + b[0][:, None] * (pxx + c * pyy)
     )
-    a = np.linalg.lstsq(lap.T @ (lap * weight[:, None]), trial.T @ weight, rcond=1e-14)[0]
+    # Small sums of their own: threads of a linear algebra library would only wait on each other.
+    energy = np.einsum("qk,ql,q->kl", lap, lap, weight)
+    a = np.linalg.solve(energy, np.einsum("qk,q->k", trial, weight))
     grid = np.zeros((DEGREE + 1, DEGREE + 1))
     grid[i, j] = a
     power = _powers()
@@ -127,6 +129,7 @@ def _solve(corners: tuple[tuple[float, float], ...], aspect: float) -> Plate:
     return Plate(shape / most, most, mean / most, top)
 
 
+@lru_cache(maxsize=1)
 def _powers() -> Floats:
     """Row k: the Legendre polynomial of degree k in powers, (DEGREE + 1, DEGREE + 1)."""
     rows = np.zeros((DEGREE + 1, DEGREE + 1))
@@ -202,10 +205,14 @@ def _top(shape: Floats, corner: Floats) -> tuple[tuple[float, float], float]:
     middle = corner.mean(axis=0)
     rings = np.linspace(0.0, 0.9, 10)
     net = (middle + rings[:, None, None] * (corner - middle)).reshape(-1, 2)
-    p = net[np.argmax(_value(shape, net, 0, 0))][None]
-    for _ in range(12):
-        g = np.array([_value(shape, p, 1, 0)[0], _value(shape, p, 0, 1)[0]])
-        xy = _value(shape, p, 1, 1)[0]
-        H = np.array([[_value(shape, p, 2, 0)[0], xy], [xy, _value(shape, p, 0, 2)[0]]])
-        p = p - np.linalg.solve(H, g)
-    return (float(p[0, 0]), float(p[0, 1])), float(_value(shape, p, 0, 0)[0])
+    p = net[np.argmax(_value(shape, net, 0, 0))]
+    n = np.arange(len(shape), dtype=np.float64)
+    down, down2 = np.maximum(n - 1, 0), np.maximum(n - 2, 0)
+    while True:
+        x, y = ((v**n, n * v**down, n * (n - 1) * v**down2) for v in p)
+        xy = x[1] @ shape @ y[1]
+        H = np.array([[x[2] @ shape @ y[0], xy], [xy, x[0] @ shape @ y[2]]])
+        step = np.linalg.solve(H, np.array([x[1] @ shape @ y[0], x[0] @ shape @ y[1]]))
+        if np.abs(step).max() < 1e-9:
+            return (float(p[0]), float(p[1])), float(x[0] @ shape @ y[0])
+        p = p - np.clip(step, -0.1, 0.1)

@@ -277,7 +277,7 @@ class Desk:
         ordered = sorted(instant.receivers.values(), key=lambda r: r.first)
         over = np.concatenate([arrays[f"r{k}/over"] for k in range(len(ordered))] or [[]])
         arrays["marks"] = views.mark_quads(project.scene, over.astype(bool))
-        record = instant_record(instant)
+        record = instant_record(instant, limits=False)
         zone = project.study.site.timezone
         time = instant.sun.time
         return {

@@ -14,7 +14,9 @@ from causticload.light.field import solve_field
 from causticload.light.points import solve_points
 from causticload.light.waves import ripple
 from causticload.optics.finish import Finish, Lobe, Reflection
+from causticload.optics.resolve import resolve_finish
 from causticload.sky.disc import SunDisc
+from causticload.study.model import FinishSpec
 
 SUN = 4.6505e-3
 UP = np.array([0.0, 0.0, 1.0])
@@ -180,6 +182,8 @@ def test_mean_over_phases_is_what_many_panes_show(tmp_path):
         loads(figured(tmp_path, [sheet(2, 2)], {**settings, "seed": seed}), points).load
         for seed in range(12)
     ]
+    even = mean.under(mean.scene, SunDisc("uniform"))
+    assert even.close.disc == even.disc == SunDisc("uniform")
     got = loads(mean.follower, points).load
     assert got == pytest.approx(loads(mean, points).load)  # a close look follows the wave
     grid = field_at(mean, tmp_path, settings)
@@ -261,6 +265,25 @@ def test_grid_agrees_with_points_off_panes_that_bow_apart(tmp_path):
     assert field.load[top] == pytest.approx(loads(lit, cell, s).load.mean(), rel=0.02)
     assert field.images[top] >= 2
     assert field.load.sum() * 0.04 == pytest.approx(0.4 * 2.0 * s[2], rel=0.02)  # all but kinks
+
+
+def test_grid_follows_a_wave_where_that_is_cheap(tmp_path):
+    s = toward(180, 70)
+    far = np.array([-s[0], -s[1], s[2]]) * 8.0
+    settings = {"roller_wave_mm": 0.1, "roller_pitch_mm": 250, "roller_along": "height"}
+    lit = figured(
+        tmp_path, [sheet(1.5, 1)], settings, receiver=sheet(2.4, 2, far[2], far[:2])[::-1],
+        spacing=0.05,
+    )  # fmt: skip
+    assert lit.follower is None
+    field = solve_field(lit, sun_direction=s, sun_radius=SUN)
+    # Strips all alike, as narrow as the cells, fall on the samples in step: up to 1 %.
+    assert abs(balance(field)) < 0.015
+    inner = np.flatnonzero(np.abs(lit.points - far)[:, :2].max(axis=1) < 0.35)
+    points = loads(lit, lit.points[inner], s).load
+    assert np.ptp(points) > 0.25 * points.mean()  # bands of the wave
+    # A cell's mean over 50 mm of bands 250 mm long, against its middle.
+    assert field.load[inner] == pytest.approx(points, abs=0.04 * points.mean())
 
 
 def test_second_reflection_off_panes_that_bow_apart(tmp_path):
@@ -362,3 +385,25 @@ def test_a_brushed_mirror_shows_one_image_and_sends_on_all_light(tmp_path):
     assert abs(balance(field)) < 0.005
     assert field.ledger["receivers"] == pytest.approx(s[2], rel=0.005)
     assert field.images.max() == 1
+
+
+def test_range_of_an_unknown_law_comes_with_the_load(tmp_path):
+    # Two figures of a data sheet: what the closure leaves open at 60 degrees is its own figure.
+    spec = FinishSpec(
+        name="sheet", solar_reflectance=0.33, visible_reflectance=0.16, angular="coated glass"
+    )
+    finish = resolve_finish("sheet", {"sheet": spec})
+    lit = figured(tmp_path, [sheet(1, 1)], {"tilt_mrad": 0.0}, finish=finish, disc=SunDisc())
+    s = toward(180, 30)
+    far = np.array([[-s[0], -s[1], s[2]]]) * 10.0
+    light = loads(lit, far, s)
+    low, high = light.limits(0)
+    theta = np.radians([60.0])
+    R, least, most = (
+        f(theta)[:, 0].mean(axis=(0, 1))[0] for f in (finish.reflectance, finish.low, finish.high)
+    )
+    assert low < light.load[0] < high
+    assert (low / light.load[0], high / light.load[0]) == pytest.approx((least / R, most / R), 0.01)
+    known = figured(tmp_path, [sheet(1, 1)], {"tilt_mrad": 0.0}, finish=table_finish(0.3))
+    light = loads(known, far, s)
+    assert light.limits(0) == pytest.approx((light.load[0], light.load[0]))
