@@ -363,7 +363,7 @@ def _rebuild(folder: Path, summary: dict[str, Any]) -> Year:
     contribution = np.zeros(int(summary["scene"]["panels"]))
     contribution[panel] = load
     return Year(
-        study=read_study(folder / "study.toml"),
+        study=read_study(folder / "study.toml", files_needed=False),
         receivers=_read_receivers(folder, summary),
         episodes=episodes,
         seasons=seasons,

@@ -35,13 +35,15 @@ PLAIN_FINISH = (
 )
 
 
-def read_study(path: str | Path) -> Study:
+def read_study(path: str | Path, *, files_needed: bool = True) -> Study:
     """Read and check a study file.
 
     Parameters
     ----------
     path : str or Path
         The file.
+    files_needed : bool
+        Whether the files that it names must be there; a result folder is read without them.
 
     Returns
     -------
@@ -68,14 +70,16 @@ def read_study(path: str | Path) -> Study:
         data = tomllib.loads(text)
     except tomllib.TOMLDecodeError as error:
         raise StudyError(f"not valid TOML: {error}", where=file.name) from error
-    return _Reader(file, index_lines(text)).study(data)
+    return _Reader(file, index_lines(text), files_needed=files_needed).study(data)
 
 
 class _Reader:
     """Turns tables into records."""
 
-    def __init__(self, file: Path, lines: Mapping[tuple[str | int, ...], int]) -> None:
-        self.file, self.lines = file, lines
+    def __init__(
+        self, file: Path, lines: Mapping[tuple[str | int, ...], int], *, files_needed: bool
+    ) -> None:
+        self.file, self.lines, self.files_needed = file, lines, files_needed
 
     def error(self, message: str, path: tuple[str | int, ...], hint: str = "") -> StudyError:
         """Say what is wrong with the key at ``path``."""
@@ -191,7 +195,7 @@ class _Reader:
     def existing(self, name: str, path: tuple[str | int, ...]) -> Path:
         """A file beside the study."""
         file = (self.file.parent / name).resolve()
-        if not file.is_file():
+        if self.files_needed and not file.is_file():
             raise self.error(
                 f"there is no file {name!r}", path, hint="Paths are relative to the study file."
             )

@@ -148,7 +148,7 @@ def appendix(evidence: Evidence) -> Iterator[Block]:
     yield Heading(1, phrases.APPENDIX, "sec-appendix")
     yield Text(phrases.REPEAT[0])
     study = next((n for n in s["inputs_sha256"] if n.endswith(".toml")), "study.toml")
-    yield Listing(phrases.REPEAT[1].format(study=study, folder=evidence.folder.name))
+    yield Listing(phrases.REPEAT[1].format(study=study, folder=evidence.folder.resolve().name))
     yield Text(phrases.DURATION.format(seconds=s["seconds"]))
     yield Heading(2, phrases.INPUTS, "sec-inputs")
     yield Table(

@@ -99,7 +99,7 @@ class Heading:
     level: int
     text: str
     key: str
-    new_page: bool = False  # on paper
+    roomy: bool = False  # what follows takes most of a page
 
 
 @dataclass(frozen=True)

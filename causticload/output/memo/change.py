@@ -71,8 +71,8 @@ def compose_change(comparison: Comparison, *, now: datetime) -> Memo:
         title=phrases.COMPARE_TITLE,
         subtitle=phrases.COMPARE_SUBTITLE.format(before=before, after=after),
         facts=(
-            (phrases.BEFORE, f"{before} ({comparison.before.folder.name})"),
-            (phrases.AFTER, f"{after} ({comparison.after.folder.name})"),
+            (phrases.BEFORE, f"{before} ({comparison.before.folder.resolve().name})"),
+            (phrases.AFTER, f"{after} ({comparison.after.folder.resolve().name})"),
             (phrases.WRITTEN, phrases.long_time(now)),
         ),
         summary=tuple(_blocks(comparison)),

@@ -147,8 +147,6 @@ class _Writer:
         word = self.word
         if isinstance(block, Heading):
             paragraph = word.add_paragraph(style=f"Heading {block.level}")
-            if block.new_page:
-                paragraph.paragraph_format.page_break_before = True
             close = self._mark(paragraph, block.key)
             self._runs(paragraph, block.text)
             close()

@@ -95,9 +95,10 @@ def _style(name: str, size: float, **more: Any) -> ParagraphStyle:
 STYLES = {
     "title": _style("title", 19, fontName=f"{FONT}-B", spaceAfter=2),
     "subtitle": _style("subtitle", 11.5, spaceAfter=9),
-    "h1": _style("h1", 12.5, fontName=f"{FONT}-B", spaceBefore=13, spaceAfter=5, keepWithNext=1),
-    "h2": _style("h2", 10, fontName=f"{FONT}-B", spaceBefore=10, spaceAfter=4, keepWithNext=1),
+    "h1": _style("h1", 12.5, fontName=f"{FONT}-B", spaceBefore=13, spaceAfter=5),
+    "h2": _style("h2", 10, fontName=f"{FONT}-B", spaceBefore=10, spaceAfter=4),
     "text": _style("text", 8.6, spaceAfter=5),
+    "lead": _style("lead", 8.6, spaceAfter=5, keepWithNext=1),
     "bullet": _style("bullet", 8.6, spaceAfter=2.5, leftIndent=11, bulletIndent=2),
     "note": _style(
         "note",
@@ -112,7 +113,7 @@ STYLES = {
         borderPadding=5,
     ),
     "caption": _style("caption", 7.6, spaceBefore=3, spaceAfter=9),
-    "table caption": _style("table caption", 7.6, spaceBefore=6, spaceAfter=3, keepWithNext=1),
+    "table caption": _style("table caption", 7.6, spaceBefore=6, spaceAfter=3),
     "cell": _style("cell", 7.0, leading=8.8),
     "cell right": _style("cell right", 7.0, leading=8.8, alignment=2),
     "head": _style("head", 7.0, leading=8.8, fontName=f"{FONT}-B"),
@@ -249,7 +250,8 @@ class _Writer:
         if isinstance(block, Heading):
             return self._heading(block)
         if isinstance(block, Text):
-            return [Paragraph(self._marked(block.text), STYLES["text"])]
+            style = "lead" if block.text.endswith(":") else "text"
+            return [Paragraph(self._marked(block.text), STYLES[style])]
         if isinstance(block, Note):
             return [Paragraph(self._marked(block.text), STYLES["note"])]
         if isinstance(block, Bullets):
@@ -271,7 +273,7 @@ class _Writer:
         text = f"<a name={quoteattr(block.key)}/>{label}&nbsp;&nbsp;{self._marked(block.text)}"
         paragraph = Paragraph(text, STYLES[f"h{block.level}"])
         paragraph.key = block.key
-        return [CondPageBreak(A4[1] if block.new_page else 55 * mm), paragraph]
+        return [CondPageBreak((175 if block.roomy else 55) * mm), paragraph]
 
     def _caption(self, block: Table | Picture, style: str) -> Any:
         caption = phrases.CAPTION.format(

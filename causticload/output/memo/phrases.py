@@ -294,16 +294,14 @@ CONTRIBUTOR_COLUMNS = (
 )
 CONFIDENCE_LINE = "Confidence: {level}. {reasons}"
 FINDING_FIGURE = (
-    "{receiver}. a: peak reflected load of the year around the spot (ring), with the limits as "
-    "lines. b: what an eye at the spot sees of the facade at the peak; coloured panels send light, "
-    "the star is the sun itself. c: the year by local clock; outlined and hatched: a limit is "
-    "exceeded. d: the day of the peak; dots follow the strongest place of the episode."
+    "{receiver}. a: reflected load around the spot (ring); lines: limits. b: the facade as an eye "
+    "at the spot sees it at the peak; colours: panels that send light, star: the sun itself. c: "
+    "worst reflected load by local clock; outlined and hatched: over a limit. d: load on that day."
 )
 FINDING_FIGURE_PLAIN = (
-    "{receiver}. a: peak reflected load of the year around the spot (ring), with the limits as "
-    "lines. b: what an eye at the spot sees of the facade; the panels were not traced. c: the "
-    "year by local clock; outlined and hatched: a limit is exceeded. d: the day of the peak; dots "
-    "follow the strongest place of the episode."
+    "{receiver}. a: reflected load around the spot (ring); lines: limits. b: the facade as an eye "
+    "at the spot sees it; the panels were not traced. c: worst reflected load by local clock; "
+    "outlined and hatched: over a limit. d: load on that day."
 )
 MORE_SPANS = " and {n} more"
 FIRM, FAIR, WEAK = "firm", "fair", "weak"

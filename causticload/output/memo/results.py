@@ -42,7 +42,7 @@ from causticload.output.memo.front import columns, limit_text, when
 from causticload.output.memo.sureness import grid_is_doubtful, sureness
 
 MOST_SPANS = 3
-MOST_PANELS = 6
+MOST_PANELS = 5
 
 
 def the_year(evidence: Evidence, findings: Sequence[Finding]) -> Iterator[Block]:
@@ -210,7 +210,7 @@ def all_findings(evidence: Evidence, findings: Sequence[Finding]) -> Iterator[Bl
     block : Block
         A section.
     """
-    yield Heading(1, phrases.FINDINGS, "sec-findings", new_page=bool(findings))
+    yield Heading(1, phrases.FINDINGS, "sec-findings", roomy=bool(findings))
     if not findings:
         yield Note(words.NO_EXCEEDANCE)
         return
@@ -235,7 +235,7 @@ def one_finding(evidence: Evidence, finding: Finding) -> Iterator[Block]:
     """
     f, e = finding, finding.main
     title = phrases.FINDING.format(n=f.number, receiver=f.receiver, whom=phrases.WHO[f.protects])
-    yield Heading(2, title, f"sec-finding-{f.number}", new_page=f.number > 1)
+    yield Heading(2, title, f"sec-finding-{f.number}", roomy=True)
     yield Table(
         f"tab-finding-{f.number}",
         phrases.LIMIT_CAPTION.format(receiver=f.receiver),

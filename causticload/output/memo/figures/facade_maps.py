@@ -24,6 +24,7 @@ from causticload.scene.model import Floats
 
 MANY = 20_000  # triangles from which a map is drawn as pixels
 FAR = 300.0  # m, end of the scale of focal distances
+STRAIGHT = 1e-3  # least depth over length of a facade that is bent in plan
 FLAT_ABOVE = 50.0  # a circle this many times wider than the facade is a straight line
 
 
@@ -80,14 +81,15 @@ def _order(base: Floats) -> Any:
     middle = base.mean(axis=0)
     local = base - middle
     spread = float(np.ptp(local, axis=0).max())
-    # Kasa's fit of a circle: x² + y² + D x + E y + F = 0 by least squares.
+    _, sizes, axes = np.linalg.svd(local, full_matrices=False)
+    axis = axes[0] if axes[0][np.argmax(np.abs(axes[0]))] > 0 else -axes[0]
+    # Kasa's fit of a circle: x² + y² + D x + E y + F = 0 by least squares. Points on a line have
+    # none, and least squares would make one up.
     A = np.column_stack([local, np.ones(len(local))])
     D, E, F = np.linalg.lstsq(A, -(local**2).sum(axis=1), rcond=None)[0]
     centre = np.array([-D / 2.0, -E / 2.0])
     radius = float(np.sqrt(max(centre @ centre - F, 0.0)))
-    if not 0.0 < radius < FLAT_ABOVE * spread:
-        axis = np.linalg.svd(local, full_matrices=False)[2][0]
-        axis = axis if axis[np.argmax(np.abs(axis))] > 0 else -axis
+    if sizes[1] < STRAIGHT * sizes[0] or not 0.0 < radius < FLAT_ABOVE * spread:
         return lambda p: (p - middle) @ axis
 
     def angle(p: Floats) -> Floats:

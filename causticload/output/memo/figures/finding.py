@@ -30,23 +30,23 @@ def finding_figure(evidence: Evidence, finding: Finding) -> Figure:
     figure : Figure
         Parts a to d.
     """
-    figure = paper_figure(WIDTH_MM, 116.0)
+    figure = paper_figure(WIDTH_MM, 106.0)
     (where, behind), (when, day) = figure.subplots(2, 2)
     episode = finding.main
     place = np.array(peak_of(episode).place)
     levels = sorted({f.criterion["limit"] for f in finding.limits})
     image = spot_crop(where, evidence, finding.receiver, place, levels)
-    bar: dict[str, Any] = {"orientation": "horizontal", "shrink": 0.9, "aspect": 30}
-    colour_bar(figure, image, where, "peak reflected load in the year (W/m²)", **bar)
+    bar: dict[str, Any] = {"shrink": 0.95, "aspect": 25}
+    colour_bar(figure, image, where, "peak of the year (W/m²)", **bar)
     where.set_title("a  where")
     scale = spot_view(behind, evidence, episode)
     if scale is not None:
-        colour_bar(figure, scale, behind, "load that the panel adds at the peak (W/m²)", **bar)
+        colour_bar(figure, scale, behind, "load by the panel (W/m²)", **bar)
     behind.set_title("b  seen from the spot")
     mine = [e for e in evidence.year.episodes if e.season in set(finding.seasons)]
     shown = calendar(evidence, [finding.receiver], mine)
     image = draw_calendar(when, shown, every=2)
-    colour_bar(figure, image, when, "worst reflected load on the receiver (W/m²)", **bar)
+    colour_bar(figure, image, when, "worst load (W/m²)", **bar)
     when.set_title("c  when")
     draw_day(day, evidence, finding.receiver, episode)
     day.set_title("d  the day of the peak")

@@ -76,8 +76,8 @@ def spot_view(axes: Any, evidence: Evidence, episode: Episode) -> Any:
         axes.set_xlim(left, right)
         axes.set_ylim(*np.degrees(frame[2:]))
     axes.set_aspect("equal")
-    axes.set_xlabel("azimuth from the spot (degrees)")
-    axes.set_ylabel("elevation from the spot (degrees)")
+    axes.set_xlabel("azimuth (degrees)")
+    axes.set_ylabel("elevation (degrees)")
     axes.xaxis.set_major_locator(mpl.ticker.MaxNLocator(5, integer=True))
     axes.xaxis.set_major_formatter(lambda x, _: f"{x % 360:.0f}")
     if not episode.contributors:
