@@ -14,7 +14,7 @@ from causticload.hazard.effects import (
     least_panels,
     material_of,
 )
-from causticload.hazard.findings import Episode, Finding, Season
+from causticload.hazard.findings import Episode, Finding, PeakCheck, Season
 from causticload.hazard.histories import AirAt, History, follow_place
 from causticload.hazard.peaks import SunAt
 from causticload.light.prepare import LitScene
@@ -87,7 +87,10 @@ def look_further(
     finding = Finding(
         season=season.number,
         confidence=grade(
-            episode, tessellation_share=tessellation_share, glass_range=0.0, weather=weather
+            episode,
+            tessellation_share=tessellation_share,
+            glass_range=_glass_range(check),
+            weather=weather,
         ),
         least_panels=least_panels(
             episode.contributors,
@@ -99,3 +102,10 @@ def look_further(
         surface=heat,
     )
     return finding, SurfaceHistory(loads, hot, plain)
+
+
+def _glass_range(check: PeakCheck) -> float:
+    """Half of what an unknown angular law leaves open, over the reflected load."""
+    if check.reflected <= 0.0 or check.reflected_low is None or check.reflected_high is None:
+        return 0.0
+    return 0.5 * (check.reflected_high - check.reflected_low) / check.reflected
