@@ -4,6 +4,7 @@ from __future__ import annotations
 
 import json
 from collections.abc import Callable
+import warnings
 from datetime import UTC, datetime
 from importlib.metadata import PackageNotFoundError, version
 from pathlib import Path
@@ -349,6 +350,32 @@ def read_year(path: str | Path) -> Year:
         ) from error
 
 
+def read_mesh(path: Path) -> pv.PolyData:
+    """Read a VTK file whole, or say that it is broken.
+
+    Parameters
+    ----------
+    path : Path
+        A ``.vtp`` file.
+
+    Returns
+    -------
+    mesh : pyvista.PolyData
+        As it was saved.
+
+    Raises
+    ------
+    ValueError
+        If it is not such a file, or cut short; the reader alone would only warn.
+    """
+    with warnings.catch_warnings():
+        warnings.simplefilter("error")
+        try:
+            return pv.read(path)
+        except UserWarning as warning:
+            raise ValueError(f"{path.name} cannot be read") from warning
+
+
 def _rebuild(folder: Path, summary: dict[str, Any]) -> Year:
     for name in ("receivers.vtp", "facade.vtp", "chart.npz", "histories.npz", "study.toml"):
         if not (folder / name).is_file():
@@ -357,7 +384,7 @@ def _rebuild(folder: Path, summary: dict[str, Any]) -> Year:
     seasons = [to_season(r) for r in summary.pop("seasons")]
     findings = {r["season"]: to_finding(r) for r in summary.pop("findings")}
     observers = [to_observer(r) for r in summary.pop("observers")]
-    facade = pv.read(folder / "facade.vtp")
+    facade = read_mesh(folder / "facade.vtp")
     panel = np.asarray(facade.cell_data["panel [number]"])
     load = np.asarray(facade.cell_data["contribution to the worst peak [W/m2]"])
     contribution = np.zeros(int(summary["scene"]["panels"]))
@@ -377,7 +404,7 @@ def _rebuild(folder: Path, summary: dict[str, Any]) -> Year:
 
 
 def _read_receivers(folder: Path, summary: dict[str, Any]) -> dict[str, ReceiverYear]:
-    mesh = pv.read(folder / "receivers.vtp")
+    mesh = read_mesh(folder / "receivers.vtp")
     data = mesh.cell_data
     corner = np.asarray(mesh.points)[mesh.faces.reshape(-1, 5)[:, 1:]]
     edge = corner[:, 1] - corner[:, 0]

@@ -363,6 +363,7 @@ def test_numbers_follow_the_order_on_paper():
 # --- bytes ----------------------------------------------------------------------------------------
 
 
+@pytest.mark.slow
 def test_written_again_the_bytes_are_the_same(memo_files):
     before = {p: p.read_bytes() for p in (memo_files.docx, memo_files.pdf, memo_files.html)}
     for path in write_memo(memo_files.folder, now=NOW):

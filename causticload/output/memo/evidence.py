@@ -8,14 +8,13 @@ from pathlib import Path
 from typing import Any
 
 import numpy as np
-import pyvista as pv
 import trimesh
 
 from causticload.errors import CausticloadError, ResultError
 from causticload.light.bvh import Tracer, build_tracer
 from causticload.optics import resolve_finish
 from causticload.optics.finish import Finish
-from causticload.output.folder import read_year
+from causticload.output.folder import read_mesh, read_year
 from causticload.output.results import Year
 from causticload.scene.model import Bools, Floats, Ints
 
@@ -70,7 +69,7 @@ class Evidence:
             ) from error
 
     def _read_shapes(self) -> None:
-        facade = pv.read(self.folder / "facade.vtp")
+        facade = read_mesh(self.folder / "facade.vtp")
         corners = np.asarray(facade.points, float)
         self.facade: Floats = corners[facade.faces.reshape(-1, 4)[:, 1:]]
         self.facade_data = {k: np.asarray(v) for k, v in facade.cell_data.items()}
@@ -78,7 +77,7 @@ class Evidence:
             self.panels = Panels(
                 **{k: file[k] for k in ("surface", "area", "centroid", "normal", "flat", "size")}
             )
-        receivers = pv.read(self.folder / "receivers.vtp")
+        receivers = read_mesh(self.folder / "receivers.vtp")
         points = np.asarray(receivers.points, float)
         self.cells: Floats = points[receivers.faces.reshape(-1, 5)[:, 1:]]
         self.cell_data = {k: np.asarray(v) for k, v in receivers.cell_data.items()}

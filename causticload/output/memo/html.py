@@ -3,6 +3,7 @@
 from __future__ import annotations
 
 import base64
+import hashlib
 import json
 from datetime import datetime
 from html import escape
@@ -25,9 +26,9 @@ from causticload.output.memo.blocks import (
 from causticload.output.memo.drawings import Drawings
 from causticload.output.words import MONTHS
 
-# The page may use what it carries, and may ask nobody for anything.
+# The page may use what it carries, told by fingerprints, and may ask nobody for anything.
 POLICY = (
-    "default-src 'none'; img-src data:; style-src 'unsafe-inline'; script-src 'unsafe-inline'; "
+    "default-src 'none'; img-src data:; style-src 'sha256-{style}'; script-src 'sha256-{script}'; "
     "base-uri 'none'; form-action 'none'"
 )
 
@@ -53,6 +54,10 @@ def write_html(
     path.write_text(_Writer(memo, drawings).page(now, model), encoding="utf-8", newline="\n")
 
 
+def _fingerprint(text: str) -> str:
+    return base64.b64encode(hashlib.sha256(text.encode()).digest()).decode()
+
+
 class _Writer:
     """Turns blocks into elements."""
 
@@ -66,16 +71,18 @@ class _Writer:
         here = files("causticload.output.memo") / "page"
         style = (here / "page.css").read_text(encoding="utf-8")
         script = (here / "page.js").read_text(encoding="utf-8")
+        style, script = f"\n{style}", f"\n{script}"
+        policy = POLICY.format(style=_fingerprint(style), script=_fingerprint(script))
         lines = [
             "<!DOCTYPE html>",
             '<html lang="en">',
             "<head>",
             '<meta charset="utf-8">',
-            f'<meta http-equiv="Content-Security-Policy" content="{POLICY}">',
+            f'<meta http-equiv="Content-Security-Policy" content="{policy}">',
             '<meta name="viewport" content="width=device-width, initial-scale=1">',
             f'<meta name="date" content="{now.isoformat(timespec="minutes")}">',
             f"<title>{escape(m.subtitle)}</title>",
-            f"<style>\n{style}</style>",
+            f"<style>{style}</style>",
             "</head>",
             "<body>",
             f"<h1>{escape(m.title)}</h1>",
@@ -88,7 +95,7 @@ class _Writer:
             *(self._block(b) for b in m.blocks),
             f"<footer>{escape(m.footer)}</footer>",
             f'<script type="application/json" id="months">{json.dumps(MONTHS)}</script>',
-            f"<script>\n{script}</script>",
+            f"<script>{script}</script>",
             "</body>",
             "</html>",
         ]

@@ -101,7 +101,9 @@ def to_bytes(figure: Figure, kind: Format) -> bytes:
         The same for the same figure.
     """
     out = io.BytesIO()
-    # The canvases' own doors: Figure.savefig would draw everything once more to lay it out.
+    # The canvases' own doors: Figure.savefig would draw everything once more to lay it out. They
+    # leave their own resolution behind.
+    figure.set_dpi(PNG_DPI)
     with mpl.rc_context(PAPER_RC):
         if kind == "svg":
             FigureCanvasSVG(figure).print_svg(out, metadata=_METADATA[kind])
