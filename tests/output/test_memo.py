@@ -5,7 +5,7 @@ import re
 import shutil
 import sys
 import zipfile
-from dataclasses import dataclass, replace
+from dataclasses import replace
 from datetime import date, timedelta
 from pathlib import Path
 
@@ -16,7 +16,17 @@ from pypdf import PdfReader
 
 from causticload.cli import DONE, WRONG_INPUT, main
 from causticload.errors import InputError, ResultError
-from causticload.hazard.findings import Season
+from causticload.hazard.findings import (
+    Confidence,
+    Finding,
+    LeastPanels,
+    ObserverFinding,
+    Sight,
+    SkinFinding,
+    SurfaceFinding,
+)
+from causticload.hazard.further import SurfaceHistory
+from causticload.hazard.histories import History
 from causticload.hazard.seasons import worth_a_close_look
 from causticload.output import words
 from causticload.output.memo import phrases, write_memo
@@ -151,7 +161,7 @@ def test_the_same_findings_stand_in_all_three(memo_files, docx_text, pdf_text):
     for text in (docx_text, pdf_text, page):
         assert "Local codes and licensed practice decide" in text
         assert phrases.TO_FILL in text
-        assert "Not assessed" in text or "not assessed in this run" in text
+        assert phrases.EYES_CAPTION in " ".join(text.split())
 
 
 def test_user_texts_are_not_taken_for_markup(memo_files, docx_text, pdf_text):
@@ -188,87 +198,108 @@ def test_a_year_without_exceedance_says_so(evidence):
     assert len(none.rows) == sum(len(c["receivers"]) for c in evidence.summary["criteria"])
 
 
-OBSERVER = {
-    "name": "gate",
-    "points": 3,
-    "look": "along",
-    "age": 50.0,
-    "after_image_days": 41.0,
-    "after_image_minutes_year": 615.0,
-    "after_image_most_minutes_day": 25.0,
-    "worst_day": "2025-03-21",
-    "retinal_burn_minutes_year": 0.0,
-    "rogue_minutes_year": 333.0,
-    "clock": ["09:10", "10:05"],
-    "spans": [["2025-03-01", "2025-04-10"]],
-    "daily": [],
-    "worst": {
-        "time": "2025-03-21T09:30:00Z",
-        "place_m": [1.0, -12.0, 1.6],
-        "images": 2,
-        "subtense_mrad": 9.0,
-        "corneal_W_m2": 300.0,
-        "retinal_W_m2": 12345.0,
-        "after_image_limit_W_m2": 777.0,
-        "burn_limit_W_m2": 99999.0,
-        "class": "after-image",
-        "illuminance_lx": 23456.0,
-        "veil_cd_m2": 432.0,
-        "contrast_left": 0.37,
-        "angle_from_sight_deg": 12.0,
-        "source_azimuth_deg": 10.0,
-        "source_elevation_deg": 5.0,
-    },
-    "sources": {"after-image": "Some source 2010"},
-    "caution": "Never look into a reflection of the sun.",
-}
+SIGHT = Sight(
+    time=np.datetime64("2025-03-21T09:30:00"),
+    place=(1.0, -12.0, 1.6),
+    images=2,
+    subtense_mrad=9.0,
+    corneal=300.0,
+    retinal=12345.0,
+    after_image_limit=777.0,
+    burn_limit=99999.0,
+    eye_class=1,
+    illuminance=23456.0,
+    veil=432.0,
+    rogue_veil=600.0,
+    contrast_left=0.37,
+    angle_deg=12.0,
+    azimuth_deg=10.0,
+    elevation_deg=5.0,
+)
+OBSERVER = ObserverFinding(
+    name="gate",
+    points=3,
+    age=50.0,
+    after_image_days=41.0,
+    after_image_minutes=615.0,
+    after_image_most=25.0,
+    worst_day=date(2025, 3, 21),
+    burn_minutes=0.0,
+    rogue_minutes=333.0,
+    spans=((date(2025, 3, 1), date(2025, 4, 10)),),
+    clock=("09:10", "10:05"),
+    daily=(),
+    worst=SIGHT,
+)
+
+
+def with_year(evidence, **changed):
+    other = Evidence(evidence.folder)
+    other.year = replace(evidence.year, **changed)
+    return other
 
 
 def test_observers_are_told_when_the_run_has_them(evidence):
-    without = "\n".join(all_text(observers(evidence)))
+    without = "\n".join(all_text(observers(with_year(evidence, observers=[]))))
     assert "gate" in without
     assert "not assessed in this run" in without
-    seen = Evidence(evidence.folder)
-    seen.summary = {**evidence.summary, "observers": [OBSERVER, {**OBSERVER, "worst": None}]}
+    seen = with_year(evidence, observers=[OBSERVER, replace(OBSERVER, worst=None)])
     text = "\n".join(all_text(observers(seen)))
     for part in ("41", "615; 25", "333", "1 March to 10 April", "09:10 to 10:05", "12,345", "777"):
         assert part in text
     assert "21 March 2025, 09:30 (UTC+00:00)" in text
     assert "37 % of contrast" in text
-    assert "Some source 2010" in text
+    assert "can leave a temporary after-image" in text.lower()
+    assert "Never look into a reflection of the sun" in text  # the caution stands beside it
+    assert "from memory" in text
     assert "no after-image found under these assumptions" in text
 
 
-@dataclass(frozen=True, kw_only=True)
-class SeasonWithFinding(Season):
-    """A season as a run with hazards worked out keeps it."""
-
-    finding: dict | None = None
-
-
-def test_what_a_season_worked_out_is_told(evidence, tmp_path):
-    extra = {
-        "confidence": {"grade": "fair", "reasons": ["Because of this."]},
-        "least_panels": {"text": "Two panels hold the rest up."},
-        "skin": {"text": "Pain comes after 9 s."},
-        "surface": {"text": "The paint reaches 81 °C."},
-        "history": 0,
-    }
-    rich = Evidence(evidence.folder)
-    rich.folder = tmp_path
-    (tmp_path / "study.toml").write_text((evidence.folder / "study.toml").read_text())
-    (tmp_path / "summary.json").write_text("{}")
+def test_what_a_season_worked_out_is_told(evidence):
     n = 5
-    np.savez(
-        tmp_path / "histories.npz",
-        start=[0, n],
-        time=np.datetime64("2025-06-21T10:00:00") + 60 * np.arange(n),
-        surface_C=np.linspace(20, 80, n),
-        surface_without_C=np.linspace(20, 40, n),
+    minutes = 60 * np.arange(n)
+    none = np.zeros(n)
+    loads = History(np.datetime64("2025-06-21T10:00:00") + minutes, none, none, none, none, none)
+    told = Finding(
+        season=0,
+        confidence=Confidence(grade="fair", reasons=("Because of this.",)),
+        least_panels=LeastPanels(
+            panels=(1, 2),
+            reflected_left=0.0,
+            enough=True,
+            reflectance_factor=0.5,
+            text="Two panels hold the rest up.",
+        ),
+        skin=SkinFinding(
+            absorbed_share=1.0,
+            pain_dose=2.0,
+            burn_dose=0.5,
+            seconds_to_pain=9.0,
+            walking_speed=1.2,
+            walking_pain_dose=0.1,
+            in_range=True,
+            text="Pain comes after 9 s.",
+        ),
+        surface=SurfaceFinding(
+            material="paint",
+            absorptance=0.9,
+            peak_c=81.0,
+            peak_without_c=40.0,
+            limit_c=None,
+            limit_kind="",
+            minutes_over=0.0,
+            contact_seconds=None,
+            text="The paint reaches 81 °C.",
+        ),
     )
-    rich.year = replace(
-        evidence.year,
-        seasons=[SeasonWithFinding(**vars(s), finding=extra) for s in evidence.year.seasons],
+    numbers = [s.number for s in evidence.year.seasons]
+    rich = with_year(
+        evidence,
+        findings={k: replace(told, season=k) for k in numbers},
+        histories={
+            k: SurfaceHistory(loads, np.linspace(20, 80, n), np.linspace(20, 40, n))
+            for k in numbers
+        },
     )
     memo = compose(rich, now=NOW)
     text = "\n".join(all_text([*memo.summary, *memo.blocks]))
