@@ -215,7 +215,7 @@ CHECK_MESH_NONE = "Shape. No smooth surface needed its tessellation checked."
 LOAD_PLAN = (
     "Peak reflected load of the year on surfaces that lie; where one lies above another, the "
     "larger load is shown. Colours are even in the square root of the load. Lines: reflected load "
-    "alone equals a limit (median of 3 by 3 cells)."
+    "alone equals a limit (median over about a metre)."
 )
 HOURS_PLAN = 'Hours of the year over the limit "{criterion}" ({limit}); white: never.'
 IMAGE_PLAN = (
