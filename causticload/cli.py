@@ -59,7 +59,10 @@ def _parser() -> argparse.ArgumentParser:
         sub.add_argument("--debug", action="store_true", help="print a traceback on a fault")
         return sub
 
-    add("inspect", "Read the model and say what it is: roles, panels, curvature, faults.")
+    inspect = add("inspect", "Read the model and say what it is: roles, panels, focus, faults.")
+    inspect.add_argument("--at", metavar="TIME", help="also tell where the facade focuses then")
+    inspect.add_argument("--sun", metavar="AZIMUTH,ELEVATION", help="degrees, instead of a time")
+    inspect.add_argument("--out", type=Path, metavar="DIR", help="write facade.vtp for that sun")
 
     instant = add("instant", "Find the loads for one position of the sun.")
     instant.add_argument("--at", metavar="TIME", help="local clock time, like 2026-06-21T13:30")
@@ -150,10 +153,17 @@ def _print(options: argparse.Namespace, data: Any, text: Callable[[], str]) -> N
 
 def _inspect(options: argparse.Namespace) -> int:
     from causticload.output.text import summarise_inspect
-    from causticload.run import inspect
+    from causticload.run import inspect, open_project, save_focus
     from causticload.study import read_study
 
-    report = inspect(read_study(options.study))
+    sun = _two_numbers(options.sun, "--sun") if options.sun else None
+    if options.out and sun is None and options.at is None:
+        raise InputError("focal distances want a sun", where="--out", hint="Add --sun or --at.")
+    project = open_project(read_study(options.study))
+    report = inspect(project, at=options.at, sun=sun)
+    if options.out:
+        options.out.mkdir(parents=True, exist_ok=True)
+        save_focus(project, options.out / "facade.vtp", at=options.at, sun=sun)
     _print(options, report, lambda: summarise_inspect(report))
     return DONE
 
@@ -258,6 +268,7 @@ class _Bar:
     NAMES: ClassVar = {
         "days": "Days of the year",
         "peaks": "Peaks and ray counts",
+        "effects": "Effects and cures",
         "writing": "Writing",
     }
 

@@ -14,14 +14,18 @@ import numpy as np
 
 from causticload.errors import InputError
 from causticload.hazard.exceed import CriterionMap, Exceedance, merge_exceedance
-from causticload.hazard.findings import Episode
+from causticload.hazard.findings import Episode, Finding, Season
+from causticload.hazard.further import SurfaceHistory, look_further
+from causticload.hazard.observers import EyePoints, EyeWatch, merge_eyes, place_eyes
 from causticload.hazard.peaks import SunState, look_closely
 from causticload.hazard.seasons import make_seasons, worth_a_close_look
 from causticload.light.bvh import Engine
 from causticload.light.count import RayCount, count_spot
 from causticload.light.field import solve_field
+from causticload.light.focus import focus_share
+from causticload.light.points import load_limits
 from causticload.light.prepare import LitScene, prepare
-from causticload.light.tally import direct_factor, merge_loads
+from causticload.light.tally import Accumulator, direct_factor, merge_loads
 from causticload.light.year import DayResult, run_day, run_days
 from causticload.optics.resolve import resolve_finish
 from causticload.output.assemble import day_rows, points_by_surface, receiver_years, summarise
@@ -88,10 +92,7 @@ def open_project(study: Study, *, engine: Engine = "auto") -> Project:
         disc=sky.disc,
         engine=engine,
     )
-    said = [*scene.assumed, *sky.assumed]
-    if study.observers:
-        names = ", ".join(o.name for o in study.observers)
-        said.append(f"Observers ({names}) are read but eyes are not assessed by this version.")
+    said = [*scene.assumed, *lit.assumed, *sky.assumed]
     for surface, finish in zip(_reflecting(scene), finishes, strict=True):
         said += [f"{surface.name}: {text}" for text in finish.assumed]
     return Project(study, scene, lit, sky, tuple(dict.fromkeys(said)))
@@ -249,6 +250,16 @@ def solve_instant(
         def direct(index: Any = index) -> Floats:
             return state.beam * direct_factor(lit, state.direction, index)
 
+        def limits(index: Any = index, spacing: float = surface.spacing) -> tuple[float, float]:
+            return load_limits(
+                lit,
+                sun_direction=state.direction,
+                sun_radius=state.radius,
+                point=int(index[field.load[index].argmax()]),
+                spacing_m=spacing,
+                bounced=field.bounced,
+            )
+
         receivers[surface.name] = ReceiverInstant(
             name=surface.name,
             kind=surface.kind,
@@ -259,6 +270,7 @@ def solve_instant(
             images=field.images[index],
             first=int(index[0]),
             _direct=direct,
+            _limits=limits,
         )
     return Instant(
         study=project.study,
@@ -419,7 +431,8 @@ def solve_year(
     report = progress or (lambda stage, done, total: None)
     plan = plan_year(study.site, study.year, project.sky)
     criteria = CriterionMap(lit, study.criteria)
-    days = _run_plan(project, plan, criteria, report, client, threads, store, stop)
+    eyes = place_eyes(study.observers, origin=project.scene.origin)
+    days = _run_plan(project, plan, criteria, eyes, report, client, threads, store, stop)
     loads = merge_loads([d.kept["load"] for d in days])
     over = merge_exceedance([d.kept["exceedance"] for d in days], points=len(lit.point_areas))
     episodes, seasons = make_seasons(
@@ -427,6 +440,7 @@ def solve_year(
     )
     reported = [s.worst for s in worth_a_close_look(seasons, checks)]
     episodes = _check_peaks(project, episodes, reported, report, threads, stop)
+    findings, histories = _look_further(project, plan, episodes, seasons, report, threads, stop)
     contribution = np.zeros(len(project.scene.panels))
     for c in next((e.contributors for e in episodes if e.contributors), ()):
         contribution[c.panel] = c.load
@@ -439,6 +453,16 @@ def solve_year(
         contribution=contribution,
         scene=project.scene,
         days=day_rows(project.scene, plan, days),
+        findings=findings,
+        histories=histories,
+        observers=merge_eyes(
+            [d.kept["eyes"] for d in days],
+            plan,
+            study.observers,
+            points=np.bincount(eyes.observer, minlength=len(study.observers)).tolist(),
+            zone=study.site.timezone,
+            day_stride=study.year.day_stride,
+        ),
     )
     seconds = clock.perf_counter() - started
     year.summary = summarise(
@@ -451,6 +475,7 @@ def _run_plan(
     project: Project,
     plan: Sequence[DayPlan],
     criteria: CriterionMap,
+    eyes: EyePoints,
     report: Progress,
     client: Any,
     threads: int | None,
@@ -468,7 +493,7 @@ def _run_plan(
     left = [d for d in plan if d.index not in results]
 
     def work(day: DayPlan) -> DayResult | None:
-        return run_day(lit, day, lambda lit, day: [Exceedance(lit, day, criteria)], stop.is_set)
+        return run_day(lit, day, lambda lit, day: _watch(lit, day, criteria, eyes), stop.is_set)
 
     if client is not None:
         done = _on_cluster(client, project.study, left)
@@ -482,6 +507,13 @@ def _run_plan(
     if stop.is_set():
         raise Stopped
     return [results[d.index] for d in plan]
+
+
+def _watch(
+    lit: LitScene, day: DayPlan, criteria: CriterionMap, eyes: EyePoints
+) -> list[Accumulator]:
+    """What is kept of a day beside its loads."""
+    return [Exceedance(lit, day, criteria), EyeWatch(lit, day, eyes)]
 
 
 def _on_cluster(client: Any, study: Study, days: Sequence[DayPlan]) -> Any:
@@ -506,7 +538,8 @@ def _cluster_day(study: Study, day: DayPlan) -> DayResult | None:
             project = open_project(study)
             _OPEN[key] = (project, CriterionMap(project.lit, study.criteria))
         project, criteria = _OPEN[key]
-    return run_day(project.lit, day, lambda lit, day: [Exceedance(lit, day, criteria)])
+    eyes = place_eyes(study.observers, origin=project.scene.origin)
+    return run_day(project.lit, day, lambda lit, day: _watch(lit, day, criteria, eyes))
 
 
 def _check_peaks(
@@ -544,13 +577,77 @@ def _check_peaks(
     return [by_number[e.number] for e in episodes]
 
 
-def inspect(study: Study | Project) -> dict[str, Any]:
-    """Say what a study's model is: roles, panels, curvature, faults, tessellation check.
+def _look_further(
+    project: Project,
+    plan: Sequence[DayPlan],
+    episodes: Sequence[Episode],
+    seasons: Sequence[Season],
+    report: Progress,
+    threads: int | None,
+    stop: threading.Event,
+) -> tuple[dict[int, Finding], dict[int, SurfaceHistory]]:
+    """Say what each counted peak does, what would cure it, and how sure that is."""
+    from concurrent.futures import ThreadPoolExecutor
+
+    by_number = {e.number: e for e in episodes}
+    sunlit = {
+        d: (day.times[i][0], day.times[i][-1]) for day in plan for i, d in enumerate(day.dates)
+    }
+    share = max((c.share for c in check_tessellation(project.scene)), default=0.0)
+    chosen = [s for s in seasons if by_number[s.worst].check is not None]
+    report("effects", 0, len(chosen))
+
+    def work(season: Season) -> tuple[int, Finding, SurfaceHistory] | None:
+        if stop.is_set():
+            return None
+        episode = by_number[season.worst]
+        finding, history = look_further(
+            project.lit,
+            season,
+            episode,
+            daylight=sunlit[episode.day],
+            sun_at=lambda t: _sun_at(project, t),
+            air_at=lambda times: _air_at(project, times),
+            tessellation_share=share,
+            weather=project.study.sky.source == "weather",
+        )
+        return season.number, finding, history
+
+    findings: dict[int, Finding] = {}
+    histories: dict[int, SurfaceHistory] = {}
+    with ThreadPoolExecutor(threads or os.cpu_count() or 1) as pool:
+        for done, found in enumerate(pool.map(work, chosen), start=1):
+            if found is not None:
+                number, finding, history = found
+                findings[number], histories[number] = finding, history
+            report("effects", done, len(chosen))
+    if stop.is_set():
+        raise Stopped
+    return findings, histories
+
+
+def _air_at(project: Project, times: Any) -> tuple[Floats, Floats]:
+    """Air temperature and wind of a study's sky at times (UTC)."""
+    states = project.sky.at(times)
+    return states.temperature_c, states.wind_ms
+
+
+def inspect(
+    study: Study | Project,
+    *,
+    at: str | datetime | np.datetime64 | None = None,
+    sun: tuple[float, float] | None = None,
+) -> dict[str, Any]:
+    """Say what a study's model is: roles, panels, curvature, faults, tessellation check, focus.
 
     Parameters
     ----------
     study : Study or Project
         The study, or one that is open already.
+    at : str or datetime, optional
+        Local clock time of a sun: also tell how much of the facade focuses where its light lands.
+    sun : (float, float), optional
+        Azimuth and elevation in degrees, instead of ``at``.
 
     Returns
     -------
@@ -563,10 +660,67 @@ def inspect(study: Study | Project) -> dict[str, Any]:
         If the input is wrong.
     """
     from causticload.scene.build import inspect_scene
+    from causticload.scene.focus import figure_focus
 
     project = _as_project(study)
     report = inspect_scene(project.scene)
     report["assumed"] = list(project.assumed)
     report["tracer"] = project.lit.tracer.name
     report["tessellation"] = [asdict(c) for c in check_tessellation(project.scene)]
+    report["figures"] = figure_focus(project.scene)
+    if at is not None or sun is not None:
+        state = _choose_sun(project, at, sun, None)
+        share = focus_share(project.lit, state.direction)
+        report["focus"] = {
+            "sun_azimuth": state.azimuth,
+            "sun_elevation": state.elevation,
+            "lit_m2": share.lit,
+            "landing_m2": share.landing,
+            "focused_m2": share.focused,
+            "share": share.share,
+        }
     return report
+
+
+def save_focus(
+    study: Study | Project,
+    path: str | os.PathLike[str],
+    *,
+    at: str | datetime | np.datetime64 | None = None,
+    sun: tuple[float, float] | None = None,
+) -> None:
+    """Write the facade with its focal distances under one sun, as VTK's PolyData.
+
+    Parameters
+    ----------
+    study : Study or Project
+        The study, or one that is open already.
+    path : path
+        The file, ending in .vtp.
+    at : str or datetime, optional
+        Local clock time of the sun.
+    sun : (float, float), optional
+        Azimuth and elevation in degrees, instead of ``at``.
+
+    Raises
+    ------
+    CausticloadError
+        If the input is wrong, or the file cannot be written.
+    """
+    from pathlib import Path
+
+    from causticload.output.files import write_whole
+    from causticload.output.meshes import facade_grid, focus_arrays
+
+    project = _as_project(study)
+    state = _choose_sun(project, at, sun, None)
+    arrays = {"panel [number]": project.scene.panel[project.scene.reflectors]}
+    grid = facade_grid(
+        project.scene,
+        {**arrays, **focus_arrays(project.scene, state.direction)},
+        {
+            "title": project.study.title,
+            "sun": f"azimuth {state.azimuth:.2f}, elevation {state.elevation:.2f} degrees",
+        },
+    )
+    write_whole(Path(path), grid.save)

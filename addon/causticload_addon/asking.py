@@ -93,6 +93,7 @@ def _show_year(job, answer):
     for season in answer["seasons"]:
         row = s.rows.add()
         row.text, row.episode = season["text"], season["worst"]
+        row.found = "\n".join(season["found"])
     s.folder = answer["folder"] or ""
     show_painted(job, answer)
     s.headline = f"{len(answer['seasons'])} findings in {answer['summary']['year']['year']}"

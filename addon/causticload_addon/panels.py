@@ -77,7 +77,8 @@ class CAUSTICLOAD_PT_year(Base, bpy.types.Panel):
         if s.rows:
             layout.template_list("CAUSTICLOAD_UL_rows", "", s, "rows", s, "row", rows=5)
             if 0 <= s.row < len(s.rows):
-                wrapped(layout.box(), s.rows[s.row].text)
+                row = s.rows[s.row]
+                wrapped(layout.box(), f"{row.text}\n{row.found}")
             layout.operator("causticload.pick_episode")
             layout.prop(s, "shown_year")
             layout.operator("causticload.show_year")

@@ -111,6 +111,7 @@ class CausticloadRow(bpy.types.PropertyGroup):
     """A line of the list of findings."""
 
     text: bpy.props.StringProperty()
+    found: bpy.props.StringProperty()
     episode: bpy.props.IntProperty()
 
 

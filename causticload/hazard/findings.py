@@ -58,6 +58,8 @@ class PeakCheck:
     count_error: float  # W/m², standard error of the count
     rays: int
     agrees: bool  # within three standard errors
+    reflected_low: float | None = None  # W/m², with the least reflectance that data leave open
+    reflected_high: float | None = None  # W/m², with the largest
 
 
 @dataclass(frozen=True, kw_only=True)
@@ -101,3 +103,103 @@ class Season:
     peak: float  # W/m²
     worst: int  # number of its worst episode
     episodes: tuple[int, ...] = field(default=())
+
+
+@dataclass(frozen=True, kw_only=True)
+class Confidence:
+    """How far a finding can be relied on, with the reasons."""
+
+    grade: str  # "firm", "fair" or "weak"
+    reasons: tuple[str, ...]
+
+
+@dataclass(frozen=True, kw_only=True)
+class LeastPanels:
+    """The fewest panels without which a peak is under its limit."""
+
+    panels: tuple[int, ...]  # strongest first; all of them where that is not enough
+    reflected_left: float  # W/m² without them
+    enough: bool  # whether the peak is then under the limit
+    reflectance_factor: float | None  # of all contributors, that does it too; None if none does
+    text: str
+
+
+@dataclass(frozen=True, kw_only=True)
+class SkinFinding:
+    """What a person takes in at a peak."""
+
+    absorbed_share: float
+    pain_dose: float  # of a person who stands there all day, 1 is pain
+    burn_dose: float  # 1 is a second-degree burn
+    seconds_to_pain: float | None  # at the peak's load, if it lasted; None: no pain by the law
+    walking_speed: float  # m/s
+    walking_pain_dose: float  # of a person who walks straight through at the peak's moment
+    in_range: bool  # of the laws
+    text: str
+
+
+@dataclass(frozen=True, kw_only=True)
+class SurfaceFinding:
+    """How hot a surface gets at a peak on the day of its worst episode."""
+
+    material: str
+    absorptance: float
+    peak_c: float  # °C
+    peak_without_c: float  # °C, by sun and sky alone
+    limit_c: float | None  # °C, lowest that the table gives
+    limit_kind: str
+    minutes_over: float
+    contact_seconds: float | None  # touch that burns; None: longer than ten minutes or unknown
+    text: str
+
+
+@dataclass(frozen=True, kw_only=True)
+class Finding:
+    """A season looked at closely: what its worst peak does, and what would cure it."""
+
+    season: int
+    confidence: Confidence
+    least_panels: LeastPanels
+    skin: SkinFinding | None
+    surface: SurfaceFinding | None
+
+
+@dataclass(frozen=True, kw_only=True)
+class Sight:
+    """What an eye sees of the reflected sun at one moment: its worst bright area."""
+
+    time: np.datetime64  # UTC
+    place: tuple[float, float, float]  # of the eye, model coordinates [m]
+    images: int  # separate bright areas in view
+    subtense_mrad: float
+    corneal: float  # W/m²
+    retinal: float  # W/m²
+    after_image_limit: float  # W/m² on the retina
+    burn_limit: float  # W/m² on the retina
+    eye_class: int  # 0 low, 1 after-image, 2 burn
+    illuminance: float  # lx, all areas, normal to each
+    veil: float  # cd/m²
+    rogue_veil: float  # cd/m², by 10 E/theta² alone
+    contrast_left: float  # share, against a sunlit street of 5,000 cd/m²
+    angle_deg: float  # from the line of sight
+    azimuth_deg: float  # of the bright area as seen, clockwise from true north
+    elevation_deg: float
+
+
+@dataclass(frozen=True, kw_only=True)
+class ObserverFinding:
+    """What an observer meets in the year."""
+
+    name: str
+    points: int
+    age: float
+    after_image_days: float  # calendar days
+    after_image_minutes: float  # in the year, at the eye's own place or anywhere on its path
+    after_image_most: float  # minutes on the worst day
+    worst_day: date | None
+    burn_minutes: float  # in the year
+    rogue_minutes: float  # in the year
+    spans: tuple[tuple[date, date], ...]
+    clock: tuple[str, str] | None
+    daily: tuple[tuple[date, float, float], ...]  # day, days it stands for, after-image minutes
+    worst: Sight | None

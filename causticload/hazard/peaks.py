@@ -81,7 +81,9 @@ class _Spot:
         inside = (i >= 0) & (i < nu) & (j >= 0) & (j < nv)
         return inside & (c.cell[np.clip(i, 0, nu - 1), np.clip(j, 0, nv - 1)] >= 0)
 
-    def light(self, points: Floats, sun: SunState, bounced: list[Bounced]) -> PointLight:
+    def light(
+        self, points: Floats, sun: SunState, bounced: list[Bounced], *, follow_waves: bool = True
+    ) -> PointLight:
         """Reflected light at points on the chart."""
         return solve_points(
             self.lit,
@@ -90,6 +92,7 @@ class _Spot:
             points=points,
             normals=np.broadcast_to(self.chart.normal, points.shape),
             bounced=bounced,
+            follow_waves=follow_waves,
         )
 
     def second(self, sun: SunState) -> list[Bounced]:
@@ -131,6 +134,7 @@ def look_closely(
     bounced = spot.second(sun)
     place, light, width = _sharpen(spot, sun, place, bounced, light)
     reflected = float(light.load.max()) * sun.beam
+    low, high = light.limits(int(light.load.argmax()))
     check = _count(spot, sun, place, bounced, seed)
     direct, diffuse = _plain_sun(spot, sun, place)
     scene = lit.scene
@@ -139,6 +143,8 @@ def look_closely(
         time=time,
         place=_tuple(place + scene.origin),
         reflected=reflected,
+        reflected_low=low * sun.beam,
+        reflected_high=high * sun.beam,
         total=reflected + direct + diffuse,
         images=int(light.images[light.load.argmax()]),
         width=width,
@@ -160,7 +166,8 @@ def _search(
         if sun.beam <= 0.0:
             continue
         points = spot.grid(spot.middle, half, half / 8.0)
-        light = spot.light(points, sun, [])
+        # Which minute it is, the mean over a wave's phases tells as well and sooner.
+        light = spot.light(points, sun, [], follow_waves=False)
         load = light.load.max() * sun.beam
         if load > highest:
             highest = load

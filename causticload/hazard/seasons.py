@@ -13,9 +13,12 @@ from scipy.sparse.csgraph import connected_components
 
 from causticload.hazard.findings import Episode, Season
 
-# Two episodes on neighbouring days are the same thing if their peaks are no further apart.
+# Two episodes on neighbouring days are the same thing if their peaks are no further apart...
 SAME_PLACE_M = 15.0
 SAME_HOUR_MIN = 45.0
+# ...or if for this share of the shorter one they are on at the same hour and mostly that near: on a
+# caustic that lasts for hours the moment of the peak jumps about.
+SAME_SHARE = 0.5
 
 
 def severity(item: Episode | Season) -> tuple[float, ...]:
@@ -119,14 +122,37 @@ def _labels(episodes: Sequence[Episode], day_stride: int) -> np.ndarray:
         near &= np.minimum(gap, 1440.0 - gap) <= SAME_HOUR_MIN
         # Neighbouring representative days, or a day and its mirror day.
         beside = np.abs(day[:, None] - day[None]) <= day_stride + 1
-        near &= beside | (day[:, None] == mirror[None])
-        a, b = np.nonzero(near)
-        heads += [members[i] for i in a]
-        tails += [members[i] for i in b]
+        beside |= day[:, None] == mirror[None]
+        tracks = [_track(episodes[i]) for i in members]
+        for a, b in zip(*np.nonzero(np.triu(beside, 1)), strict=True):
+            if near[a, b] or _run_together(tracks[a], tracks[b]):
+                heads.append(members[a])
+                tails.append(members[b])
     graph = sparse.coo_matrix(
         (np.ones(len(heads)), (np.array(heads, int), np.array(tails, int))), shape=(n, n)
     )
     return connected_components(graph, directed=False)[1] if n else np.zeros(0, int)
+
+
+def _track(episode: Episode) -> tuple[np.ndarray, np.ndarray]:
+    """Minutes of the day (n,), rising, and places (n, 3) of an episode's path."""
+    minute = np.array([_minute_of_day(s.time) for s in episode.path])
+    minute += 1440.0 * (minute < minute[0])  # over midnight in UTC
+    return minute, np.array([s.place for s in episode.path])
+
+
+def _run_together(
+    first: tuple[np.ndarray, np.ndarray], second: tuple[np.ndarray, np.ndarray]
+) -> bool:
+    """Whether two paths are on at the same hours and mostly near each other then."""
+    (t1, x1), (t2, x2) = first, second
+    low, high = max(t1[0], t2[0]), min(t1[-1], t2[-1])
+    shorter = min(t1[-1] - t1[0], t2[-1] - t2[0])
+    if high <= low or high - low < SAME_SHARE * shorter:
+        return False
+    t = np.linspace(low, high, 9)
+    apart = [np.interp(t, t1, x1[:, k]) - np.interp(t, t2, x2[:, k]) for k in range(3)]
+    return bool(np.median(np.linalg.norm(apart, axis=0)) <= SAME_PLACE_M)
 
 
 def _minute_of_day(time: np.datetime64) -> float:
@@ -150,7 +176,7 @@ def _season(group: Sequence[Episode], tz: ZoneInfo, day_stride: int) -> Season:
         criterion=worst.criterion,
         protects=worst.protects,
         receiver=worst.receiver,
-        spans=_spans(sorted((d, each[0].days) for d, each in by_day.items()), day_stride),
+        spans=day_spans(sorted((d, each[0].days) for d, each in by_day.items()), day_stride),
         days=float(sum(each[0].days for each in by_day.values())),
         clock=(min(starts), max(ends)),
         minutes_per_day=float(max(minutes.values())),
@@ -186,8 +212,21 @@ def _minutes(time: np.datetime64) -> float:
     return float(time.astype("datetime64[ms]").astype(np.int64)) / 60_000.0
 
 
-def _spans(days: Sequence[tuple[date, float]], day_stride: int) -> tuple[tuple[date, date], ...]:
-    """Runs of days: each representative day stands for days on either side of it."""
+def day_spans(days: Sequence[tuple[date, float]], day_stride: int) -> tuple[tuple[date, date], ...]:
+    """Gather days into runs: each representative day stands for days on either side of it.
+
+    Parameters
+    ----------
+    days : sequence of (date, float)
+        Representative days in order, and the calendar days that each stands for.
+    day_stride : int
+        Days from one representative day to the next.
+
+    Returns
+    -------
+    spans : tuple of (date, date)
+        First and last day of each run.
+    """
     spans: list[tuple[date, date]] = []
     for day, weight in days:
         half = timedelta(days=int((weight - 1.0) // 2))
@@ -197,6 +236,28 @@ def _spans(days: Sequence[tuple[date, float]], day_stride: int) -> tuple[tuple[d
         else:
             spans.append((first, last))
     return tuple(spans)
+
+
+def clock_span(spans: Sequence[np.ndarray], zone: str) -> tuple[str, str] | None:
+    """Tell between which clock times something happens.
+
+    Parameters
+    ----------
+    spans : sequence of (2,) int
+        First and last second of each day, since 1970 UTC.
+    zone : str
+        IANA time zone.
+
+    Returns
+    -------
+    clock : (str, str) or None
+        Earliest and latest local clock time, "HH:MM"; None for no days.
+    """
+    if not len(spans):
+        return None
+    tz = ZoneInfo(zone)
+    ends = [[_clock(np.datetime64(int(t), "s"), tz) for t in span] for span in spans]
+    return min(a for a, _ in ends), max(b for _, b in ends)
 
 
 def _clock(time: np.datetime64, tz: ZoneInfo) -> str:

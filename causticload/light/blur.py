@@ -39,6 +39,7 @@ class Blur(NamedTuple):
     radii: Floats  # (s, r) tangents of the discs' angular radii, growing along a row
     weights: Floats  # (s, r) their shares of the light; a row adds up to 1
     reach: Floats  # (s,) tangent of the largest radius
+    variance: Floats  # (s,) of the light along an axis, over the largest radius squared
     edge: Floats  # (s, EDGE_CELLS + 1) light inwards of a line at distance -1 to 1
     mean: Floats  # (s, CELLS + 1, CELLS + 1) mean of k along an edge: distance h, end s
 
@@ -70,6 +71,7 @@ def make_blur(radii: Floats, weights: Floats) -> Blur:
         radii=radii,
         weights=weights,
         reach=radii[:, -1].copy(),
+        variance=(weights * (radii / radii[:, -1:]) ** 2).sum(axis=1) / 4.0,
         edge=np.stack([edge for edge, _ in tables]),
         mean=np.stack([mean for _, mean in tables]),
     )
@@ -120,16 +122,16 @@ def light_inside_triangle(Q, L, mean, x, y, rho):
     """Share of the light of a disc of radius ``rho`` about (x, y) that falls within ``Q``.
 
     ``L`` holds the lines along the edges of ``Q``: a x + b y + c is the distance inwards. ``Q`` is
-    no speck: it is larger than a hundredth of the disc. The angles of the edges' parts outside the
-    disc are added as one complex product, whose argument is their sum but for a whole turn.
+    no speck: its area is a hundredth of the disc's at least. The angles of the edges' parts outside
+    the disc are added as one complex product, whose argument is their sum but for a whole turn.
     """
     inner, re, im = 0.0, 1.0, 0.0
-    centre_inside = True
+    nearest = math.inf
     for j in range(3):
         k = (j + 1) % 3
         a, b = L[j, 0], L[j, 1]
         h = (a * x + b * y + L[j, 2]) / rho
-        centre_inside = centre_inside and h > 0.0
+        nearest = min(nearest, h)
         # Along the edge, the inner side on the left.
         s1 = (b * (Q[j, 0] - x) - a * (Q[j, 1] - y)) / rho
         s2 = (b * (Q[k, 0] - x) - a * (Q[k, 1] - y)) / rho
@@ -151,6 +153,7 @@ def light_inside_triangle(Q, L, mean, x, y, rho):
         d = abs(h)
         inner += h * (high * _mean_at(mean, d, abs(high)) - low * _mean_at(mean, d, abs(low)))
     light = (math.atan2(im, re) + inner) / (2.0 * math.pi)
-    if light < 1e-3 and (centre_inside or light < -1e-3):
+    # The whole turn: all light is inside only if no edge comes near, none only if one does.
+    if light < -1e-3 or (nearest > 0.5 and light < 0.5):
         light += 1.0
     return min(1.0, max(0.0, light))

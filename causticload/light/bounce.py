@@ -2,6 +2,8 @@
 
 from __future__ import annotations
 
+from typing import NamedTuple
+
 import numpy as np
 from numba import njit
 
@@ -11,6 +13,21 @@ from causticload.light.targets import Meanings
 from causticload.light.tubes import Beams, _frame_beam, _s_axis, empty_beams
 from causticload.optics.tables import lookup
 from causticload.scene.model import Bools, Floats, Ints
+
+
+class Reflected(NamedTuple):
+    """Beams off one sheet of the mirrors they met. ``k`` beams."""
+
+    beams: Beams
+    good: Bools  # (k,) all six rays met one mirror and left it; other rows carry no meaning
+    sheet: Ints  # (k,) row of the tables of the mirror met
+    meets: Bools  # (k,) the mirror has such a sheet; other rows are those of its last
+
+    def take(self, index: Ints | Bools) -> Reflected:
+        """Return the beams at ``index``."""
+        return Reflected(
+            self.beams.take(index), self.good[index], self.sheet[index], self.meets[index]
+        )
 
 
 @njit(cache=True, nogil=True, error_model="numpy")
@@ -34,8 +51,11 @@ def _barycentric(corner, x, out):
 
 
 @njit(cache=True, nogil=True, error_model="numpy")
-def _bounce(F, R, sheet_of, B, triangle, distance, C, good):
-    """Reflect every ray of the beams ``B`` where it met ``triangle``; fills the beams ``C``."""
+def _bounce(F, R, sheet_of, sheets_met, place, B, triangle, distance, C, good):
+    """Reflect every ray of the beams ``B`` where it met ``triangle``; fills the beams ``C``.
+
+    Off the sheet in the given place of each mirror, or its last if it has fewer.
+    """
     x, n, b = np.empty(3), np.empty(3), np.empty(3)
     for k in range(good.size):
         for j in range(6):
@@ -47,7 +67,7 @@ def _bounce(F, R, sheet_of, B, triangle, distance, C, good):
             for i in range(3):
                 x[i] = B.start[k, j, i] + distance[k, j] * d[i]
             _barycentric(F.corner[t], x, b)
-            normal_at(F, t, b[0], b[1], b[2], n)
+            normal_at(F, t, sheet_of[t] + min(place, sheets_met[t] - 1), b[0], b[1], b[2], n)
             reflect(d, n, C.direction[k, j])
             r = C.direction[k, j]
             # The normal must face the light and the ray must leave the facet.
@@ -76,7 +96,8 @@ def _bounce(F, R, sheet_of, B, triangle, distance, C, good):
             + C.s_axis[k, 2] * B.s_axis[k, 2]
         )
         c2 = min(1.0, turn * turn)
-        row = sheet_of[triangle[k, 0]]
+        t = triangle[k, 0]
+        row = sheet_of[t] + min(place, sheets_met[t] - 1)
         for band in range(2):
             s, p = B.power[k, 2 * band], B.power[k, 2 * band + 1]
             C.power[k, 2 * band] = lookup(R[row, band, 0], cos_theta) * (c2 * s + (1.0 - c2) * p)
@@ -99,11 +120,13 @@ def bounce(
     F: Facets,
     R: Floats,
     sheet_of: Ints,
+    sheets_met: Ints,
+    place: int,
     meanings: Meanings,
     tracer: Tracer,
     clearance_m: float,
-) -> tuple[Beams, Bools, Ints]:
-    """Reflect beams off the mirror that all their rays meet.
+) -> Reflected:
+    """Reflect beams off one sheet of the mirror that all their rays meet.
 
     The two polarisations are turned from the first plane of incidence into the second: light
     reflected once is partly polarised, and a second pane at right angles may send on far less,
@@ -119,7 +142,11 @@ def bounce(
     R : (sheets, 2, 2, angles) float
         Reflectance tables.
     sheet_of : (m,) int
-        Row of the tables for each triangle, -1 off reflectors.
+        Row of the tables for each triangle's first sheet, -1 off reflectors.
+    sheets_met : (m,) int
+        How many sheets each triangle has.
+    place : int
+        Which of them, from 0.
     meanings : Meanings
         What each triangle is to a ray.
     tracer : Tracer
@@ -129,12 +156,8 @@ def bounce(
 
     Returns
     -------
-    bounced : Beams
+    reflected : Reflected
         ``k`` beams.
-    whole : (k,) bool
-        Whether all six rays met one mirror and left it. The other rows carry no meaning.
-    sheet : (k,) int
-        Row of the tables of the mirror met.
     """
     k = len(beams.chief)
     origin = beams.start + clearance_m * beams.side[:, None]
@@ -147,5 +170,8 @@ def bounce(
     triangle = np.where(whole[:, None], triangle, 0)
     distance = np.where(whole[:, None], distance, 1.0)
     bounced = empty_beams(k)
-    _bounce(F, R, np.maximum(sheet_of, 0), beams, triangle, distance, bounced, whole)
-    return bounced, whole, sheet_of[triangle[:, 0]]
+    first, count = np.maximum(sheet_of, 0), np.maximum(sheets_met, 1)
+    _bounce(F, R, first, count, place, beams, triangle, distance, bounced, whole)
+    met = triangle[:, 0]
+    sheet = first[met] + np.minimum(place, count[met] - 1)
+    return Reflected(bounced, whole, sheet.astype(np.int32), place < count[met])

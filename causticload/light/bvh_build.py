@@ -1,8 +1,9 @@
-"""Build a bounding volume hierarchy by the binned surface-area heuristic.
+"""Build a bounding volume hierarchy with eight boxes to a node.
 
-Method: I. Wald, "On fast construction of SAH-based bounding volume hierarchies", IEEE Symposium
-on Interactive Ray Tracing (2007). Each node holds the boxes of its two children side by side, so
-that one visit decides on both.
+First a binary tree by the binned surface-area heuristic: I. Wald, "On fast construction of
+SAH-based bounding volume hierarchies", IEEE Symposium on Interactive Ray Tracing (2007). Then
+its nodes are drawn together: I. Wald, C. Benthin and S. Boulos, "Getting rid of packets",
+IEEE Symposium on Interactive Ray Tracing (2008).
 """
 
 from __future__ import annotations
@@ -14,21 +15,25 @@ import numpy as np
 from numba import njit
 from numpy.typing import NDArray
 
+from causticload.light.bvh_lanes import WIDTH
 from causticload.scene.model import Floats, Ints
 
 BINS = 16
 LEAF = 4  # most triangles in a leaf
-DEEPEST = 62  # the traversal's stack holds two more
+SHARE = 4  # a leaf is written as SHARE * first triangle + triangles - 1, below 0
+PLANNED = 62  # splits above one another by the heuristic; below them triangles are halved
+DEEPEST = PLANNED + 32
 
 
 class Hierarchy(NamedTuple):
     """A tree of boxes over triangles. ``b`` nodes, ``m`` triangles in the order of the leaves."""
 
-    box: NDArray[np.float32]  # (b, 2, 6) m: low and high corner of each child, rounded outwards
-    child: Ints  # (b, 2) node, or first triangle of a leaf
-    leaf: Ints  # (b, 2) triangles of a leaf; 0 for a node
+    box: NDArray[np.float32]  # (b, 6, 8) m: low planes x, y, z, then high ones, rounded outwards
+    child: Ints  # (b, 8) node; below 0 for a leaf, inverted bit by bit
     corner: Floats  # (m, 9) m: first corner, and the edges to the second and third
     number: Ints  # (m,) number of the triangle before it was sorted
+    low: Floats  # (3,) m: box of the whole
+    high: Floats  # (3,)
 
 
 def build_hierarchy(triangles: Floats) -> Hierarchy:
@@ -37,7 +42,7 @@ def build_hierarchy(triangles: Floats) -> Hierarchy:
     Parameters
     ----------
     triangles : (m, 3, 3) float
-        Corners, finite, m > 0. [m]
+        Corners, finite, 0 < m < 2^29. [m]
 
     Returns
     -------
@@ -48,40 +53,73 @@ def build_hierarchy(triangles: Floats) -> Hierarchy:
     low, high = triangles.min(axis=1), triangles.max(axis=1)
     middle = 0.5 * (low + high)
     order = np.arange(m, dtype=np.int32)
-    most = max(1, 2 * m)
-    node_low, node_high = np.full((most, 3), np.inf), np.full((most, 3), -np.inf)
-    right, count = np.zeros(most, np.int32), np.zeros(most, np.int32)
+    node_low, node_high = np.empty((2 * m, 3)), np.empty((2 * m, 3))
+    right, count = np.zeros(2 * m, np.int32), np.zeros(2 * m, np.int32)
     used = _build(low, high, middle, order, node_low, node_high, right, count)
-    box, child, leaf = _pair(node_low[:used], node_high[:used], right[:used], count[:used])
-    T = triangles[order]
-    return Hierarchy(
-        box=box,
-        child=child,
-        leaf=leaf,
-        corner=np.concatenate([T[:, 0], T[:, 1] - T[:, 0], T[:, 2] - T[:, 0]], axis=1),
-        number=order,
-    )
+    del low, high, middle
+    box, child = _draw_together(node_low[:used], node_high[:used], right[:used], count[:used])
+    whole_low, whole_high = node_low[0].copy(), node_high[0].copy()
+    del node_low, node_high
+    corner = np.empty((m, 9))
+    corner[:, :3] = triangles[order, 0]
+    corner[:, 3:6] = triangles[order, 1] - corner[:, :3]
+    corner[:, 6:] = triangles[order, 2] - corner[:, :3]
+    return Hierarchy(box, child, corner, order, whole_low, whole_high)
 
 
-def _pair(
-    low: Floats, high: Floats, right: Ints, count: Ints
-) -> tuple[NDArray[np.float32], Ints, Ints]:
-    """Put the boxes of siblings side by side; a tree of one leaf gets a node over it."""
-    bounds = np.concatenate([_outwards(low, -np.inf), _outwards(high, np.inf)], axis=1)
-    inner = np.flatnonzero(count == 0) if len(count) > 1 else np.zeros(0, int)
-    number = np.full(len(count), -1, np.int32)
-    number[inner] = np.arange(len(inner))
-    pair = np.stack([inner + 1, right[inner]], axis=1)
-    if not len(inner):  # one leaf: both children are that leaf
-        pair = np.zeros((1, 2), int)
-    leaf = count[pair]
-    child = np.where(leaf > 0, right[pair], number[pair]).astype(np.int32)
-    return np.ascontiguousarray(bounds[pair]), child, leaf.astype(np.int32)
+@njit(cache=True, nogil=True)
+def _children(node, right, count, leaves, area, kids):
+    """Write up to ``WIDTH`` nodes that make up a binary node; returns how many.
+
+    The largest is opened first. One that could be a whole node by itself is not, so that the
+    nodes at the bottom, which are most of them, are well filled.
+    """
+    if count[node] > 0:  # a tree of one leaf
+        kids[0] = node
+        return 1
+    kids[0], kids[1], n = node + 1, right[node], 2
+    while n < WIDTH:
+        largest, chosen = -1.0, -1
+        for i in range(n):
+            c = kids[i]
+            may = leaves[c] > WIDTH or (count[c] == 0 and leaves[node] <= WIDTH)
+            if may and area[c] > largest:
+                largest, chosen = area[c], i
+        if chosen < 0:
+            break
+        kids[n] = right[kids[chosen]]
+        kids[chosen] += 1
+        n += 1
+    return n
 
 
-def _outwards(bounds: Floats, towards: float) -> NDArray[np.float32]:
-    """Bounds in single precision, never inside the true ones."""
-    return np.nextafter(bounds.astype(np.float32), np.float32(towards))
+@njit(cache=True, nogil=True)
+def _draw_together(low, high, right, count):
+    """Boxes and children of the wide tree; nodes near the top stand together."""
+    b = len(right)
+    leaves, area = np.ones(b, np.int32), np.empty(b)
+    for k in range(b - 1, -1, -1):
+        area[k] = _half_area(low[k], high[k])
+        if count[k] == 0:
+            leaves[k] = leaves[k + 1] + leaves[right[k]]
+    most = b // 2 + 1
+    box, child = np.empty((most, 6, WIDTH), np.float32), np.zeros((most, WIDTH), np.int32)
+    source, kids = np.zeros(most, np.int32), np.empty(WIDTH, np.int32)
+    k, used = 0, 1
+    while k < used:
+        box[k, :3], box[k, 3:] = math.inf, -math.inf  # nothing enters where no child is
+        for i in range(_children(source[k], right, count, leaves, area, kids)):
+            c = kids[i]
+            for axis in range(3):
+                box[k, axis, i] = np.nextafter(np.float32(low[c, axis]), np.float32(-math.inf))
+                box[k, 3 + axis, i] = np.nextafter(np.float32(high[c, axis]), np.float32(math.inf))
+            if count[c] > 0:
+                child[k, i] = ~(right[c] * SHARE + count[c] - 1)
+            else:
+                child[k, i], source[used] = used, c
+                used += 1
+        k += 1
+    return box[:used].copy(), child[:used].copy()
 
 
 @njit(cache=True, nogil=True)
@@ -137,6 +175,20 @@ def _best_split(low, high, middle, order, first, last, mid_low, mid_high):
 
 
 @njit(cache=True, nogil=True)
+def _part(middle, order, first, last, start, scale, bin_):
+    """Put the triangles up to a bin before the others; returns where the others begin."""
+    i, j = first, last - 1
+    while i <= j:
+        t = order[i]
+        if min(BINS - 1, int((middle[t] - start) * scale)) <= bin_:
+            i += 1
+        else:
+            order[i], order[j] = order[j], order[i]
+            j -= 1
+    return i
+
+
+@njit(cache=True, nogil=True)
 def _build(low, high, middle, order, node_low, node_high, right, count):
     """Split from the top, the left side first; returns the number of nodes."""
     stack = np.empty((DEEPEST + 2, 4), np.int64)  # first, last, parent whose right this is, depth
@@ -150,8 +202,8 @@ def _build(low, high, middle, order, node_low, node_high, right, count):
         used += 1
         if parent >= 0:
             right[parent] = node
-        mid_low[:] = math.inf
-        mid_high[:] = -math.inf
+        mid_low[:], node_low[node] = math.inf, math.inf
+        mid_high[:], node_high[node] = -math.inf, -math.inf
         for k in range(first, last):
             t = order[k]
             for i in range(3):
@@ -161,21 +213,17 @@ def _build(low, high, middle, order, node_low, node_high, right, count):
                 mid_high[i] = max(mid_high[i], middle[t, i])
         n = last - first
         axis, bin_, cost = -1, 0, math.inf
-        if n > 1 and depth < DEEPEST:
+        if n > 1 and depth < PLANNED:
             axis, bin_, cost = _best_split(low, high, middle, order, first, last, mid_low, mid_high)
         whole = _half_area(node_low[node], node_high[node])
-        if axis < 0 or (n <= LEAF and cost + whole >= n * whole):
+        if n <= LEAF and (axis < 0 or cost + whole >= n * whole):
             right[node], count[node] = first, n
             continue
-        scale = BINS / (mid_high[axis] - mid_low[axis])
-        i, j = first, last - 1
-        while i <= j:
-            t = order[i]
-            if min(BINS - 1, int((middle[t, axis] - mid_low[axis]) * scale)) <= bin_:
-                i += 1
-            else:
-                order[i], order[j] = order[j], order[i]
-                j -= 1
+        if axis < 0:  # middles that are the same, or a tree of splits off the edge
+            i = first + n // 2
+        else:
+            scale = BINS / (mid_high[axis] - mid_low[axis])
+            i = _part(middle[:, axis], order, first, last, mid_low[axis], scale, bin_)
         stack[top, 0], stack[top, 1], stack[top, 2], stack[top, 3] = i, last, node, depth + 1
         top += 1
         stack[top, 0], stack[top, 1], stack[top, 2], stack[top, 3] = first, i, -1, depth + 1

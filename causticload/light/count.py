@@ -8,12 +8,13 @@ reflectance tables and the tracer, and nothing else: no tubes, no overlap law, n
 from __future__ import annotations
 
 import math
-from dataclasses import dataclass
+from dataclasses import dataclass, fields
 
 import numpy as np
 
 from causticload.errors import InputError
 from causticload.light.prepare import LitScene
+from causticload.scene.figure_slopes import slopes_at, steepest_of_panels
 from causticload.scene.model import Bools, Floats, Ints
 
 # Pieces of facets between which rays are shared out have no longer edge than this.
@@ -39,6 +40,7 @@ class _Pieces:
     corner: Floats  # (k, 3, 3) m
     normal: Floats  # (k, 3, 3) corner normals, not renormalised between
     across: Floats  # (k,) m², area across the sun's rays
+    lean: Floats  # (k,) rad, at most: how far figures turn the normals given here
 
 
 def _quarter(corner: Floats, normal: Floats) -> tuple[Floats, Floats]:
@@ -67,14 +69,19 @@ def _pieces(lit: LitScene, s: Floats) -> _Pieces:
         facet = np.tile(facet[large], 4)
     facet, corner, normal = (np.concatenate(a) for a in zip(*done, strict=True))
     cross = np.cross(corner[:, 1] - corner[:, 0], corner[:, 2] - corner[:, 0])
-    return _Pieces(facet, corner, normal, 0.5 * np.abs(cross @ s))
+    lean = np.zeros(len(facet))
+    g = lit.scene.figures
+    if g is not None:
+        lean = np.append(steepest_of_panels(g), 0.0)[lit.scene.panel[facet]]
+    return _Pieces(facet, corner, normal, 0.5 * np.abs(cross @ s), lean)
 
 
 def _may_reach(p: _Pieces, s: Floats, *, spread: float, centre: Floats, radius: float) -> Bools:
     """Pieces of which any ray could pass within ``radius`` of ``centre``; never too few.
 
     A ray starts within the piece's radius of its middle, and leaves within twice the largest
-    angle between its normals, plus ``spread``, of the middle's reflected ray.
+    angle between its normals and that of its figure, plus ``spread``, of the middle's reflected
+    ray.
     """
     middle = p.corner.mean(axis=1)
     size = np.linalg.norm(p.corner - middle[:, None], axis=2).max(axis=1)
@@ -86,7 +93,7 @@ def _may_reach(p: _Pieces, s: Floats, *, spread: float, centre: Floats, radius: 
     way = centre - middle
     depth = np.einsum("ki,ki->k", way, r)
     lateral = np.linalg.norm(way - depth[:, None] * r, axis=1)
-    angle = np.minimum(2.0 * turn + spread, 1.5)
+    angle = np.minimum(2.0 * (turn + p.lean) + spread, 1.5)
     reach = size + radius + (np.abs(depth) + size + radius) * np.tan(angle)
     return (depth > -(size + radius)) & (lateral <= reach)
 
@@ -135,25 +142,54 @@ class _Experiment:
         sun /= np.linalg.norm(sun, axis=1, keepdims=True)
         facet = p.facet[k]
         face = lit.F.face_normal[facet]
-        sheet = lit.sheet_of[facet]
-        n = self._roughen(n, lit.slope_error[sheet])
+        sheet, sheets = self._sheet(facet)
+        n = self._lean(n, facet, sheet, x)
         n = n * np.sign(np.einsum("ni,ni->n", n, face))[:, None]
         side = np.sign(np.einsum("ni,ni->n", face, sun))
         lit_side = np.einsum("ni,ni->n", n, sun) * side
-        out, power, axis = self._mirror(-sun, n, sheet, np.full((rays, 2), 0.5))
+        share = np.repeat(0.5 * sheets[:, None], 2, axis=1)
+        out, power, axis = self._mirror(-sun, n, sheet, share)
         leaves = np.einsum("ni,ni->n", out, face) * side
         tilt = np.abs(np.einsum("ni,ni->n", face, sun)) / np.abs(face @ self.s)
         keep = (lit_side > 0.0) & (leaves > 0.0)
         power *= (np.where(keep, tilt, 0.0) * total / rays)[:, None]
         return x + (side * lit.clearance_m)[:, None] * face, out, power, axis, sun
 
-    def _roughen(self, n: Floats, slope_error: Floats) -> Floats:
-        if not slope_error.any():
+    def _sheet(self, facet: Ints) -> tuple[Ints, Ints]:
+        """Pick one of each facet's sheets; also how many there are, which weighs the ray."""
+        exact, own = self.lit.exact, self.lit.scene.surface[facet]
+        count = exact.count[own]
+        return exact.first[own] + self.rng.integers(0, count), count
+
+    def _lean(self, n: Floats, facet: Ints, sheet: Ints, x: Floats) -> Floats:
+        """Tilt normals by the figure of their sheet and, at random, by its roughness."""
+        scene, exact = self.lit.scene, self.lit.exact
+        panel = scene.panel[facet]
+        frame = self._panel_frame(n, panel)
+        slope = self.rng.normal(size=(len(n), 2)) * exact.slopes[sheet]
+        g = scene.figures
+        if g is not None and (on := np.flatnonzero(g.first[panel] >= 0)).size:
+            p = panel[on]
+            row = g.first[p] + np.minimum(exact.pane[sheet[on]], g.count[p] - 1)
+            axes = np.stack([scene.panels.width_axis[p], g.height_axis[p]], axis=1)
+            xy = np.einsum("ni,nai->na", x[on] - g.middle[p], axes)
+            side = np.sign(
+                np.einsum("ni,ni->n", self.lit.F.face_normal[facet[on]], scene.panels.normal[p])
+            )
+            slope[on] += side[:, None] * slopes_at(g, row, xy)
+        if not slope.any():
             return n
+        leant = n - slope[:, :1] * frame[0] - slope[:, 1:] * frame[1]
+        return np.asarray(leant / np.linalg.norm(leant, axis=1, keepdims=True))
+
+    def _panel_frame(self, n: Floats, panel: Ints) -> tuple[Floats, Floats]:
+        """The panel's width and height axis for each ray; any axes where it has none."""
+        panels = self.lit.scene.panels
+        width = panels.width_axis[panel]
+        height = np.cross(panels.normal[panel], width)
         e1, e2 = _tangent_frame(n)
-        tilt = self.rng.normal(size=(len(n), 2)) * slope_error[:, None]
-        rough = n + tilt[:, :1] * e1 + tilt[:, 1:] * e2
-        return rough / np.linalg.norm(rough, axis=1, keepdims=True)
+        none = (np.einsum("ni,ni->n", width, width) < 0.5)[:, None]
+        return np.where(none, e1, width), np.where(none, e2, height)
 
     def _mirror(
         self, d: Floats, n: Floats, sheet: Ints, power: Floats, before: Floats | None = None
@@ -172,8 +208,8 @@ class _Experiment:
         for row in np.unique(sheet):
             mine = sheet == row
             for pol in range(2):
-                R[mine, pol] = np.interp(theta[mine], self.angle, self.lit.R[row, 0, pol])
-        return out, power * R * (1.0 - self.lit.scatter[sheet])[:, None], axis
+                R[mine, pol] = np.interp(theta[mine], self.angle, self.lit.exact.R[row, 0, pol])
+        return out, power * R * (1.0 - self.lit.exact.scatter[sheet])[:, None], axis
 
     def arrive(self, x: Floats, d: Floats) -> tuple[Bools, Floats]:
         """Which rays cross the spot from its front, and how far away that is."""
@@ -202,8 +238,10 @@ class _Experiment:
             return value
         t = triangle[on]
         y = x[on] + way[on, None] * d[on]
-        n = self._normal_at(t, y)
-        out, again, _ = self._mirror(d[on], n, lit.sheet_of[t], power[on], axis[on])
+        sheet, sheets = self._sheet(t)
+        n = self._lean(self._normal_at(t, y), t, sheet, y)
+        before = power[on] * sheets[:, None]
+        out, again, _ = self._mirror(d[on], n, sheet, before, axis[on])
         face = lit.F.face_normal[t]
         side = -np.sign(np.einsum("ni,ni->n", d[on], face))
         turned = np.sign(np.einsum("ni,ni->n", n, face)) * side
@@ -302,7 +340,7 @@ def count_spot(
     everything = _pieces(lit, s)
     everything = _select(everything, everything.across > 0.0)
     # Far out on the Gaussian of a rough surface a ray still counts: six standard deviations.
-    spread = 1.001 * sun_radius + 12.0 * float(lit.slope_error.max(initial=0.0))
+    spread = 1.001 * sun_radius + 12.0 * float(lit.exact.slopes.max(initial=0.0))
     near = _select(
         everything,
         _may_reach(everything, s, spread=spread, centre=experiment.centre, radius=radius_m),
@@ -320,7 +358,7 @@ def count_spot(
 
 
 def _select(p: _Pieces, index: Bools) -> _Pieces:
-    return _Pieces(p.facet[index], p.corner[index], p.normal[index], p.across[index])
+    return _Pieces(*(getattr(p, f.name)[index] for f in fields(p)))
 
 
 def _accumulate(order, pieces: _Pieces, rays: int) -> tuple[float, float, int]:  # type: ignore[no-untyped-def]

@@ -23,7 +23,7 @@ from typing import Any, NamedTuple
 import numpy as np
 
 from causticload.light.blur import Blur, make_blur
-from causticload.light.bounce import bounce
+from causticload.light.bounce import Reflected, bounce
 from causticload.light.prepare import LitScene
 from causticload.light.settle import settle
 from causticload.light.splat import sample_counts, splat
@@ -52,7 +52,7 @@ from causticload.scene.model import Bools, Floats, Ints
 
 # A tube is small enough when it misplaces the middle of an image's edge by less than this share
 # of the radius of the sun's image...
-LINEAR = 0.15
+LINEAR = 0.12
 # ...or by less than this many metres, which no receiver cell or eye can tell.
 LINEAR_FLOOR_M = 0.002
 # A straddling tube with no more samples than this asks for each instead of being halved.
@@ -123,6 +123,20 @@ class Bounced(NamedTuple):
     tubes: Tubes
     sheet: Ints  # (k,) row of the sun's discs that blurs them
     kept: Floats  # (k,) share of their power that stays in the mirror direction
+    shows: Bools  # (k,) they count as images of the sun
+    mirror: Ints  # (k,) row of the tables of the second mirror
+
+
+class _Landing(NamedTuple):
+    """What beams off one sheet of a mirror come to. ``k`` beams."""
+
+    code: Ints  # (k, 4)
+    under: Ints  # (k, 4)
+    ring: Ints  # (k,)
+    edge: Ints  # (k,) where to halve those that are not fine
+    fine: Bools  # (k,) small enough to be laid down, or none of this sheet's
+    lands: Bools  # (k,) they meet one chart
+    straddles: Bools  # (k,) they meet a chart and more
 
 
 class _Images(NamedTuple):
@@ -192,7 +206,14 @@ def solve_field(
     s = np.ascontiguousarray(sun_direction, dtype=np.float64)
 
     def work(share: Ints) -> Field:
-        return _Walk(lit, s, blur).run(lit.base.take(share))
+        shown = lit.shows[lit.base.sheet[share]]
+        own = _Walk(lit, s, blur).run(lit.base.take(share[shown]))
+        if not shown.all():
+            # Sheets that share one image of the sun with another sheet add light but no image.
+            more = _Walk(lit, s, blur).run(lit.base.take(share[~shown]))
+            more.images[:] = 0
+            own.merge(more)
+        return own
 
     shares = [np.arange(i, len(lit.base.facet), threads) for i in range(max(1, threads))]
     if len(shares) == 1:
@@ -272,6 +293,8 @@ class _Walk:
         lost = np.flatnonzero((outcome == GRAZES) & (sun > 0.0))
         self._add("unfollowed", self._take_in(generation.take(lost), beams.take(lost)))
         keep = (outcome == LIT) & (sun > 0.0)
+        if keep.all():
+            return generation, beams
         return generation.take(keep), beams.take(keep)
 
     def _targets(self, generation: Generation, beams: Beams) -> tuple[Ints, Ints]:
@@ -354,7 +377,8 @@ class _Walk:
     def _is_fine(self, beams: Beams, chart: Ints, ring: Ints, age: Ints) -> tuple[Ints, Bools]:
         """Return the edge to halve, and whether three corners describe the image well enough."""
         G = self.lit.grids
-        error, length, depth = image_errors(beams, o=G.origin[chart], n=G.normal[chart])
+        every = np.arange(len(chart), dtype=np.int32)
+        error, length, depth = image_errors(beams, every, o=G.origin[chart], n=G.normal[chart])
         rho = (depth + beams.longest) * self.blur.reach[ring]
         worst = error.max(axis=1)
         fine = (worst <= np.maximum(LINEAR * rho, LINEAR_FLOOR_M)) | (age >= MOST_HALVINGS)
@@ -362,7 +386,7 @@ class _Walk:
         # A corner ray that runs along the plane never meets it: halve until that hardly matters.
         skims = depth < 0.0
         fine[skims] = age[skims] >= SKIM_HALVINGS
-        edge[skims] = _longest_edge(beams.take(skims))
+        edge[skims] = _longest_edge(beams)[skims]
         return edge, fine
 
     def _splat(self, beams: Beams, factor: Floats, ring: Ints, chart: Ints) -> None:
@@ -405,15 +429,13 @@ class _Walk:
             settled.solar * self._mirrored(ring[done]),
             ring[done],
         )
-        rest = beams.take(~done)
-        return halve_generation(generation.take(~done), _longest_edge(rest))
+        return halve_generation(generation.take(~done), _longest_edge(beams)[~done])
 
     def _images(self, beams: Beams, charts: Ints, ring: Ints) -> _Images:
         """How each beam lands on each of the charts given for it, (n, 4)."""
         G = self.lit.grids
         beam, chart = distinct_charts(charts)
-        rows = beams.take(beam)
-        error, length, depth = image_errors(rows, o=G.origin[chart], n=G.normal[chart])
+        error, length, depth = image_errors(beams, beam, o=G.origin[chart], n=G.normal[chart])
         rho = self.blur.reach[ring[beam]] * (depth + beams.longest[beam])
         return _Images(
             beam,
@@ -422,7 +444,7 @@ class _Walk:
             length.max(axis=1),
             depth,
             rho,
-            sample_counts(rows, edge=length, rho=rho, chart=chart, grids=G),
+            sample_counts(beams.frame[beam, 0], edge=length, rho=rho, chart=chart, grids=G),
         )
 
     def _is_bent(self, beams: Beams, charts: Ints, ring: Ints, age: Ints) -> Bools:
@@ -519,16 +541,22 @@ class _Walk:
         generation, beams, under = generation.take(~bent), beams.take(~bent), under[~bent]
         if not len(generation.age):
             return halves
-        after, whole, sheet = bounce(
-            beams,
-            F=lit.F,
-            R=lit.R,
-            sheet_of=lit.sheet_of,
-            meanings=lit.meanings,
-            tracer=lit.tracer,
-            clearance_m=lit.clearance_m,
-        )
-        self.field.rays += 6 * len(sheet)
+        bounced = [
+            bounce(
+                beams,
+                F=lit.F,
+                R=lit.R,
+                sheet_of=lit.sheet_of,
+                sheets_met=lit.sheets_met,
+                place=place,
+                meanings=lit.meanings,
+                tracer=lit.tracer,
+                clearance_m=lit.clearance_m,
+            )
+            for place in range(int(lit.sheets_met.max()))
+        ]
+        self.field.rays += 6 * len(generation.age) * len(bounced)
+        whole = np.logical_and.reduce([b.good for b in bounced])
         torn = ~whole
         lost = torn & (generation.age >= MIRROR_HALVINGS)
         flux = self._take_in(generation.take(lost), beams.take(lost))
@@ -538,8 +566,7 @@ class _Walk:
         again, edge = self._follow(
             generation.take(whole),
             beams.take(whole),
-            after.take(whole),
-            sheet[whole],
+            [b.take(whole) for b in bounced],
             under[whole],
         )
         torn &= ~lost
@@ -558,17 +585,36 @@ class _Walk:
         self._settle(beams, None, under, generation.sun == 1.0, factor, ring, alone=True)
 
     def _follow(
-        self, generation: Generation, before: Beams, after: Beams, sheet: Ints, under: Ints
+        self, generation: Generation, before: Beams, bounced: list[Reflected], under: Ints
     ) -> tuple[Generation, Ints]:
         """Land beams after their second reflection; return those too large and where to halve."""
-        own = generation.tubes.sheet
+        landings = [self._landing(generation, before, b) for b in bounced]
+        edge = np.zeros(len(generation.age), np.int32)
+        for landing in landings:
+            edge = np.where(landing.fine, edge, landing.edge)
+        fine = np.logical_and.reduce([landing.fine for landing in landings])
+
+        first = self._take_in(generation.take(fine), before.take(fine))
+        self._add("rereflected", first)
+        self._add("absorbed", first)
+        self._settle_under(generation.take(fine), before.take(fine), under[fine])
+        for b, landing in zip(bounced, landings, strict=True):
+            rows = fine & b.meets
+            if rows.any():
+                self._leave(generation.take(rows), before.take(rows), b.take(rows), landing, rows)
+        return generation.take(~fine), edge[~fine]
+
+    def _landing(self, generation: Generation, before: Beams, b: Reflected) -> _Landing:
+        """Find what the beams off one sheet of a mirror meet and whether they are small enough."""
+        own, after = generation.tubes.sheet, b.beams
         # The wider of the two blurs stands for both where surfaces are rough.
-        ring = np.where(self.blur.reach[sheet] > self.blur.reach[own], sheet, own).astype(np.int32)
-        code, under_last = self._find(after, ring)
+        wider = self.blur.reach[b.sheet] > self.blur.reach[own]
+        ring = np.where(wider, b.sheet, own).astype(np.int32)
+        code, under = self._find(after, ring)
         agreed = (code == code[:, :1]).all(axis=1)
         lands = agreed & (code[:, 0] >= 0)
-        edge = np.zeros(len(sheet), np.int32)
-        fine = np.ones(len(sheet), bool)
+        edge = np.zeros(len(ring), np.int32)
+        fine = np.ones(len(ring), bool)
         edge[lands], fine[lands] = self._is_fine(
             after.take(lands), code[lands, 0], ring[lands], generation.age[lands]
         )
@@ -578,47 +624,38 @@ class _Walk:
         )
         fine[straddles] = small | (generation.age[straddles] >= MOST_HALVINGS)
         edge[straddles] = _longest_edge(after.take(straddles))
-        bent = fine & self._is_bent(after, under_last, ring, generation.age)
-        fine &= ~bent
+        bent = fine & self._is_bent(after, under, ring, generation.age)
         edge[bent] = _longest_edge(before.take(bent))
+        return _Landing(code, under, ring, edge, (fine & ~bent) | ~b.meets, lands, straddles)
 
-        first = self._take_in(generation.take(fine), before.take(fine))
-        onward = self._mirrored(own) * self._mirrored(sheet)
+    def _leave(
+        self, generation: Generation, before: Beams, b: Reflected, landing: _Landing, rows: Bools
+    ) -> None:
+        """Enter and lay down what one sheet of a mirror sends on."""
+        own, after = generation.tubes.sheet, b.beams
+        code, under, ring = landing.code[rows], landing.under[rows], landing.ring[rows]
+        lands, straddles = landing.lands[rows], landing.straddles[rows]
+        onward = self._mirrored(own) * self._mirrored(b.sheet)
         factor = after.solar * onward
-        self._add("rereflected", first)
-        self._add("absorbed", first - (after.solar * self._mirrored(own))[fine])
-        self._add("scattered", (after.solar * self._mirrored(own) - factor)[fine])
-        whole = fine & ~straddles
+        returned = after.solar * self._mirrored(own)
+        self._add("absorbed", -returned)
+        self._add("scattered", returned - factor)
+        whole = ~straddles
         self._split_flux(factor[whole], code[whole])
         self._unfollowed(factor[whole], code[whole])
-        now = fine & lands
-        self._splat(after.take(now), factor[now], ring[now], code[now, 0])
-        self._settle_under(generation.take(fine), before.take(fine), under[fine])
-        now = fine & straddles
-        self.field.tubes += int(now.sum())
-        spread, _, _ = self._spread(after.take(now), ring[now], np.ones(now.sum(), bool))
-        self._split_flux(factor[now], spread)
-        self._unfollowed(factor[now], spread)
+        self._splat(after.take(lands), factor[lands], ring[lands], code[lands, 0])
+        self.field.tubes += int(straddles.sum())
+        spread, _, _ = self._spread(
+            after.take(straddles), ring[straddles], np.ones(straddles.sum(), bool)
+        )
+        self._split_flux(factor[straddles], spread)
+        self._unfollowed(factor[straddles], spread)
         met = np.full((len(code), 8 + SPREAD_RAYS), UNKNOWN, np.int32)
-        met[now, :4], met[:, 4:8], met[now, 8:] = code[now], under_last, spread
-        self._settle(
-            after.take(fine),
-            before.take(fine),
-            met[fine],
-            np.ones(fine.sum(), bool),
-            factor[fine],
-            ring[fine],
-        )
+        met[straddles, :4], met[:, 4:8], met[straddles, 8:] = code[straddles], under, spread
+        self._settle(after, before, met, np.ones(len(code), bool), factor, ring)
         self.field.bounced.append(
-            Bounced(
-                after.take(fine),
-                before.take(fine),
-                generation.tubes.take(fine),
-                ring[fine],
-                onward[fine],
-            )
+            Bounced(after, before, generation.tubes, ring, onward, self.lit.shows[own], b.sheet)
         )
-        return generation.take(~fine), edge[~fine]
 
 
 def _join(parts: list[Generation]) -> Generation:

@@ -15,7 +15,8 @@ from typing import NamedTuple
 import numpy as np
 from numba import njit
 
-from causticload.light.field import Bounced, halve_generation
+from causticload.light.cut import wave_spans, wave_sway
+from causticload.light.field import LINEAR, Bounced, halve_generation
 from causticload.light.field import Generation as _Generation
 from causticload.light.overlap import flux_density
 from causticload.light.prepare import LitScene
@@ -44,6 +45,8 @@ class Parts(NamedTuple):
     distance: Floats  # (q,) path from the first reflection [m]
     whole: Bools  # (q,) the middle of the sun's image is in view within this tube
     second: Bools  # (q,) by way of a second reflection
+    low: Floats  # (q,) share of the point's load at the least reflectance that is left open [1]
+    high: Floats  # (q,) the same at the largest
 
 
 @dataclass
@@ -53,6 +56,11 @@ class PointLight:
     load: Floats  # (p,) [1]
     images: Ints  # (p,)
     parts: Parts
+
+    def limits(self, point: int) -> tuple[float, float]:
+        """Return the least and largest load that unknown angular laws leave open at a point."""
+        mine = self.parts.point == point
+        return float(self.parts.low[mine].sum()), float(self.parts.high[mine].sum())
 
 
 @njit(cache=True, nogil=True, error_model="numpy")
@@ -73,8 +81,11 @@ def _section(start, direction, chief, frame, z, q):
 
 
 @njit(cache=True, nogil=True, error_model="numpy")
-def _approach(B, before, C, radius, reach, ring, near, error, edge):
-    """Tell which beams pass within ``radius`` of ``C``, and how well three rays describe them."""
+def _approach(B, before, C, radius, reach, ring, sway, near, error, edge):
+    """Tell which beams pass within ``radius`` of ``C``, and how well three rays describe them.
+
+    Light may leave a beam by the angle ``sway`` of what its rays do not show.
+    """
     q, m, far = np.empty((3, 2)), np.empty((3, 2)), np.empty((3, 2))
     for k in range(near.size):
         f = B.frame[k]
@@ -101,18 +112,43 @@ def _approach(B, before, C, radius, reach, ring, near, error, edge):
             spread = max(spread, math.hypot(far[j, 0] - q[j, 0], far[j, 1] - q[j, 1]))
             size = max(size, math.hypot(q[j, 0] - mx, q[j, 1] - my))
         rho = reach[ring[k]] * (max(z, 0.0) + radius + before[k])
-        within = size + 2.0 * bulge + spread + rho + radius
+        within = size + 2.0 * bulge + spread + rho + radius + sway[k] * (max(z, 0.0) + radius)
         if math.hypot(x - mx, y - my) <= within:
             near[k], error[k] = True, worst / max(rho, FINE_FLOOR_M / FINE)
+
+
+@njit(cache=True, nogil=True, error_model="numpy")
+def _corner_lines(start, direction, before, chief, frame, at, slope):
+    """Corner rays as lines over the depth: at + z slope, (3, 2) each; also the longest lag.
+
+    The lag is what a ray's path from its first reflection is longer than its depth.
+    """
+    most = -math.inf
+    for j in range(3):
+        w = x = y = dw = dx = dy = 0.0
+        for i in range(3):
+            offset, d = start[j, i] - chief[i], direction[j, i]
+            w += offset * frame[0, i]
+            x += offset * frame[1, i]
+            y += offset * frame[2, i]
+            dw += d * frame[0, i]
+            dx += d * frame[1, i]
+            dy += d * frame[2, i]
+        slope[j, 0], slope[j, 1] = dx / dw, dy / dw
+        at[j, 0], at[j, 1] = x - w * dx / dw, y - w * dy / dw
+        most = max(most, before[j] - w)
+    return most
 
 
 @njit(cache=True, nogil=True, error_model="numpy")
 def _gather(B, factor, radii, weights, ring, P, N, tube, point, load, weight, whole):
     """Write every contribution of a beam to a point; without room, count the pairs at most."""
     q, w, W = np.empty((3, 2)), np.empty(3), np.empty(5)
+    at, slope = np.empty((3, 2)), np.empty((3, 2))
     found = 0
     for k in range(factor.size):
         f, r = B.frame[k], radii[ring[k]]
+        lag = _corner_lines(B.start[k], B.direction[k], B.before[k], B.chief[k], f, at, slope)
         for p in range(len(P)):
             z = x = y = 0.0
             for i in range(3):
@@ -125,9 +161,9 @@ def _gather(B, factor, radii, weights, ring, P, N, tube, point, load, weight, wh
                 cos_g = 1.0  # an eye looks at the light
             if z <= 0.0 or cos_g <= 0.0:
                 continue
-            _section(B.start[k, :3], B.direction[k, :3], B.chief[k], f, z, q)
-            path_plane(B, k, q, W)
-            rho = r[-1] * (z + W[4])
+            for j in range(3):
+                q[j, 0], q[j, 1] = at[j, 0] + z * slope[j, 0], at[j, 1] + z * slope[j, 1]
+            rho = r[-1] * (z + lag)
             if (
                 min(q[0, 0], q[1, 0], q[2, 0]) > x + rho
                 or max(q[0, 0], q[1, 0], q[2, 0]) < x - rho
@@ -138,6 +174,7 @@ def _gather(B, factor, radii, weights, ring, P, N, tube, point, load, weight, wh
             if tube.size == 0:
                 found += 1
                 continue
+            path_plane(B, k, q, W)
             density = flux_density(
                 q[0, 0] - x,
                 q[0, 1] - y,
@@ -169,6 +206,8 @@ def solve_points(
     points: Floats,
     normals: Floats | None = None,
     bounced: list[Bounced] | None = None,
+    follow_waves: bool = True,
+    quick: bool = False,
 ) -> PointLight:
     """Find the reflected light at points.
 
@@ -187,6 +226,10 @@ def solve_points(
         own across it, as on an eye that turns to it.
     bounced : list of Bounced, optional
         Beams after a second reflection, from :func:`causticload.light.field.solve_field`.
+    follow_waves : bool
+        Whether every roller wave is followed; else as the grids take them.
+    quick : bool
+        Refine tubes no further than for grids: to tell what is in view, not to read off a peak.
 
     Returns
     -------
@@ -196,9 +239,9 @@ def solve_points(
     P = np.ascontiguousarray(points, dtype=np.float64).reshape(-1, 3)
     N = np.zeros_like(P) if normals is None else np.ascontiguousarray(normals, dtype=np.float64)
     s = np.ascontiguousarray(sun_direction, dtype=np.float64)
-    radii, weights = lit.rings(sun_radius, FINE_RINGS)
-    ask = _Question(lit, s, radii, weights, P, N)
-    found = [ask.direct()]
+    near = lit.close if follow_waves else lit
+    found = [_Question(near, s, sun_radius, P, N, quick=quick).direct()]
+    ask = _Question(lit, s, sun_radius, P, N, quick=quick)
     found += [ask.second(b) for b in bounced or [] if len(b.sheet)]
     parts = Parts(*(np.concatenate(a) for a in zip(*found, strict=True)))
     return PointLight(
@@ -223,19 +266,30 @@ class _Question:
     """Points that ask under one sun."""
 
     def __init__(
-        self, lit: LitScene, s: Floats, radii: Floats, weights: Floats, P: Floats, N: Floats
+        self, lit: LitScene, s: Floats, sun_radius: float, P: Floats, N: Floats, *, quick: bool
     ) -> None:
-        self.lit, self.s, self.radii, self.weights = lit, s, radii, weights
+        self.lit, self.s = lit, s
+        self.radii, self.weights = lit.rings(sun_radius, None if quick else FINE_RINGS)
+        self.fine = LINEAR if quick else FINE
         self.P, self.N = P, N
-        self.reach = np.ascontiguousarray(radii[:, -1])
+        self.reach = np.ascontiguousarray(self.radii[:, -1])
         self.middle = 0.5 * (P.min(axis=0) + P.max(axis=0))
         self.radius = float(np.linalg.norm(P - self.middle, axis=1).max())
 
-    def _approach(self, beams: Beams, ring: Ints) -> tuple[Bools, Floats, Ints]:
+    def _approach(self, beams: Beams, ring: Ints, sway: Floats) -> tuple[Bools, Floats, Ints]:
         n = len(ring)
         near, error, edge = np.empty(n, bool), np.empty(n), np.empty(n, np.int64)
         _approach(
-            beams, beams.longest, self.middle, self.radius, self.reach, ring, near, error, edge
+            beams,
+            beams.longest,
+            self.middle,
+            self.radius,
+            self.reach,
+            ring,
+            sway,
+            near,
+            error,
+            edge,
         )
         return near, error, edge
 
@@ -248,20 +302,24 @@ class _Question:
         tubes: list[Tubes] = []
         while len(work.age):
             beams, outcome = light_tubes(lit.F, lit.R, work.tubes, sun_direction=self.s)
-            near, error, edge = self._approach(beams, work.tubes.sheet)
-            near &= outcome == LIT
-            fine = (error <= FINE) | (work.age >= MOST_HALVINGS)
+            sway = wave_sway(lit.F, work.tubes)
+            near, error, edge = self._approach(beams, work.tubes.sheet, sway)
+            # With a wave between its corners a tube may leave by another way than they do.
+            waves = sway > 0.0
+            near &= (outcome == LIT) | waves
+            edge[waves] = wave_spans(lit.F, work.tubes.take(waves)).argmax(axis=1)
+            fine = ((error <= self.fine) & ~waves) | (work.age >= MOST_HALVINGS)
             tubes.append(work.tubes.take(near & fine))
             rest = near & ~fine
             work = halve_generation(work.take(rest), edge[rest])
         ready = Tubes(*(np.concatenate(a) for a in zip(*tubes, strict=True)))
         beams, _ = light_tubes(lit.F, lit.R, ready, sun_direction=self.s)
         kept = 1.0 - lit.scatter[ready.sheet]
-        return self._gather(beams, None, ready, kept, ready.sheet)
+        return self._gather(beams, None, ready, kept, ready.sheet, lit.shows[ready.sheet])
 
     def second(self, bounced: Bounced) -> Parts:
         """Light by two reflections."""
-        near, _, _ = self._approach(bounced.beams, bounced.sheet)
+        near, _, _ = self._approach(bounced.beams, bounced.sheet, np.zeros(len(bounced.sheet)))
         tubes = bounced.tubes.take(near)
         kept = bounced.kept[near]
         return self._gather(
@@ -270,10 +328,41 @@ class _Question:
             tubes,
             kept,
             bounced.sheet[near],
+            bounced.shows[near],
+            bounced.mirror[near],
         )
 
+    def _left_open(
+        self, beams: Beams, sources: Beams | None, tubes: Tubes, mirror: Ints | None
+    ) -> tuple[Floats, Floats]:
+        """Least and largest reflectance of each beam's mirrors over what was taken, (n,) each."""
+        sheets = self.lit.sheets
+        first = beams if sources is None else sources
+        # A mirror turns light by pi less twice its angle of incidence.
+        theta = [0.5 * np.arccos(np.clip(first.frame[:, 0] @ self.s, -1.0, 1.0))]
+        rows = [tubes.sheet]
+        if mirror is not None:
+            turned = np.einsum("ni,ni->n", first.frame[:, 0], beams.frame[:, 0])
+            theta.append(0.5 * np.arccos(np.clip(-turned, -1.0, 1.0)))
+            rows.append(mirror)
+        found = []
+        for table in (sheets.low, sheets.high):
+            factor = np.ones(len(tubes.facet))
+            for angle, row in zip(theta, rows, strict=True):
+                place = np.rint(angle * (2.0 / np.pi) * (table.shape[-1] - 1)).astype(np.int64)
+                factor *= table[row, 0, place]
+            found.append(factor)
+        return found[0], found[1]
+
     def _gather(
-        self, beams: Beams, sources: Beams | None, tubes: Tubes, kept: Floats, ring: Ints
+        self,
+        beams: Beams,
+        sources: Beams | None,
+        tubes: Tubes,
+        kept: Floats,
+        ring: Ints,
+        shows: Bools,
+        mirror: Ints | None = None,
     ) -> Parts:
         lit = self.lit
         factor = beams.solar * kept
@@ -297,6 +386,7 @@ class _Question:
         tube, point, load, X, whole = tube[free], point[free], load[free], X[free], whole[free]
         solar = beams.solar[tube]
         visible = beams.power[tube, 2] + beams.power[tube, 3]
+        low, high = self._left_open(beams, sources, tubes, mirror)
         crossing = tubes.area * np.abs(lit.F.face_normal[tubes.facet] @ self.s)
         way = X - self.P[point]
         length = np.linalg.norm(way, axis=1)
@@ -308,6 +398,63 @@ class _Question:
             direction=way / length[:, None],
             reflectance=solar * kept[tube] / crossing[tube],
             distance=length + beams.longest[tube],
-            whole=whole,
+            whole=whole & shows[tube],
             second=np.full(len(tube), sources is not None),
+            low=load * low[tube],
+            high=load * high[tube],
         )
+
+
+def load_limits(
+    lit: LitScene,
+    *,
+    sun_direction: Floats,
+    sun_radius: float,
+    point: int,
+    spacing_m: float,
+    bounced: list[Bounced],
+) -> tuple[float, float]:
+    """Find how far unknown angular laws leave open the load of one receiver point.
+
+    Parameters
+    ----------
+    lit : LitScene
+        The prepared scene.
+    sun_direction : (3,) float
+        Unit vector to the sun, scene frame.
+    sun_radius : float
+        Angular radius of the sun. [rad]
+    point : int
+        Number of the receiver point.
+    spacing_m : float
+        Size of its cell. [m]
+    bounced : list of Bounced
+        Beams after a second reflection.
+
+    Returns
+    -------
+    low, high : float
+        Factors on the load; 1 and 1 where all laws are known. The range is that of unpolarised
+        light, at each reflection. [1]
+    """
+    if (lit.sheets.low == 1.0).all() and (lit.sheets.high == 1.0).all():
+        return 1.0, 1.0
+    n = lit.point_normals[point]
+    u = np.cross(n, [0.0, 0.0, 1.0] if abs(n[2]) < 0.9 else [1.0, 0.0, 0.0])
+    u /= np.linalg.norm(u)
+    step = spacing_m / 3.0 * np.array([-1.0, 0.0, 1.0])
+    a, b = (v.ravel()[:, None] for v in np.meshgrid(step, step))
+    P = lit.points[point] + a * u + b * np.cross(n, u)
+    parts = solve_points(
+        lit,
+        sun_direction=sun_direction,
+        sun_radius=sun_radius,
+        points=P,
+        normals=np.broadcast_to(n, P.shape),
+        bounced=bounced,
+        follow_waves=False,
+    ).parts
+    total = float(parts.load.sum())
+    if total <= 0.0:
+        return 1.0, 1.0
+    return float(parts.low.sum()) / total, float(parts.high.sum()) / total

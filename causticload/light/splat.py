@@ -140,13 +140,15 @@ def samples_per_axis(h, width):
     return min(math.ceil(h / (SAMPLE_STEP * width)), MOST_SAMPLES)
 
 
-def sample_counts(beams: Beams, *, edge: Floats, rho: Floats, chart: Ints, grids: Grids) -> Floats:
+def sample_counts(
+    direction: Floats, *, edge: Floats, rho: Floats, chart: Ints, grids: Grids
+) -> Floats:
     """Tell how many samples beams take on charts, the charts thought without end.
 
     Parameters
     ----------
-    beams : Beams
-        ``k`` beams.
+    direction : (k, 3) float
+        Unit vectors along the beams.
     edge : (k, 3) float
         Lengths of the edges of their images across the beam. [m]
     rho : (k,) float
@@ -168,7 +170,7 @@ def sample_counts(beams: Beams, *, edge: Floats, rho: Floats, chart: Ints, grids
     width = rho + np.divide(area, longest, out=np.zeros_like(area), where=longest > 0.0)
     h = grids.spacing[chart]
     step = h / np.minimum(np.ceil(h / (SAMPLE_STEP * np.maximum(width, 1e-9))), MOST_SAMPLES)
-    cos_g = np.abs(np.einsum("ki,ki->k", beams.frame[:, 0], grids.normal[chart]))
+    cos_g = np.abs(np.einsum("ki,ki->k", direction, grids.normal[chart]))
     footprint_area = (area + round_about * rho + np.pi * rho**2) / np.maximum(cos_g, 1e-3)
     return footprint_area / step**2
 
@@ -240,19 +242,25 @@ def path_at(plane, x, y, z):
 
 
 @njit(cache=True, nogil=True, error_model="numpy")
-def footprint(B, k, G, c, reach, Q, grid_to_beam, plane):
+def footprint(B, k, G, c, reach, variance, Q, grid_to_beam, plane):
     """Meet beam ``k`` and chart ``c``.
 
     ``Q`` (3, 2) takes the image across the beam; ``grid_to_beam`` (3, 3) takes depth and the two
     cross coordinates of the grid's corner (column 0) and of a step of one metre along u and v
     (columns 1, 2); ``plane`` (5,) what :func:`path_plane` lays. ``reach`` is the tangent of the
-    largest disc's angular radius. Returns the largest radius of the sun's image and the first and
-    last grid row (in metres along v) that it can touch; a radius below 0 where they do not meet.
+    largest disc's angular radius, ``variance`` that of its light along an axis, over the radius².
+
+    A sample stands for its square, so the sun's disc is widened by the square's own variance
+    across the beam: that makes the sample its square's mean, to a few per cent of a step.
+
+    Returns the largest radius of the widened image of the sun; the first and last grid row (in
+    metres along v) that it can touch; the number of samples along a cell; and what widens, as an
+    addition to the path squared. The radius is below 0 where beam and chart do not meet.
     """
     o, n = G.origin[c], G.normal[c]
     near, far = image_on_plane(B.start[k, :3], B.direction[k, :3], B.chief[k], B.frame[k], o, n, Q)
     if near < 0.0:
-        return -1.0, 0.0, 0.0
+        return -1.0, 0.0, 0.0, 1, 0.0
     for a in range(3):
         f = B.frame[k, a]
         grid_to_beam[a, 0] = (
@@ -267,20 +275,27 @@ def footprint(B, k, G, c, reach, Q, grid_to_beam, plane):
     cc, d = grid_to_beam[2, 1], grid_to_beam[2, 2]
     det = a * d - b * cc
     if abs(det) < 1e-9:  # the beam runs along the chart
-        return -1.0, 0.0, 0.0
+        return -1.0, 0.0, 0.0, 1, 0.0
     depth_u, depth_v = grid_to_beam[0, 1], grid_to_beam[0, 2]
     # The depth over the footprint: that of the image and of its blur, which tilts with the chart.
     slope = math.hypot((depth_u * d - depth_v * cc) / det, (depth_v * a - depth_u * b) / det)
     path_plane(B, k, Q, plane)
     rho = reach * (far + plane[4])
     rho = rho / max(0.05, 1.0 - slope * reach)
+    f = B.frame[k, 0]
+    cos_g = f[0] * n[0] + f[1] * n[1] + f[2] * n[2]
+    m = samples_per_axis(G.spacing[c], half_width(Q, rho))
+    step = G.spacing[c] / m
+    # A square of side ``step``, foreshortened one way; both ways together over two.
+    widening = step * step * (1.0 + cos_g * cos_g) / (24.0 * variance)
+    rho = math.sqrt(rho * rho + widening)
     low, high = math.inf, -math.inf
     for j in range(3):
         x, y = Q[j, 0] - grid_to_beam[1, 0], Q[j, 1] - grid_to_beam[2, 0]
         v = (a * y - cc * x) / det
         low, high = min(low, v), max(high, v)
     blur = rho * math.hypot(a, cc) / abs(det)
-    return rho, low - blur, high + blur
+    return rho, low - blur, high + blur, m, widening / (reach * reach)
 
 
 @njit(cache=True, nogil=True, error_model="numpy")
@@ -385,14 +400,13 @@ def walk(B, beam, chart, factor, blur, ring, G, task, E, images, S):
         # Rows of tables are picked out here: in the loops below it would cost more than the sums.
         reach, edge, mean = blur.reach[ring[k]], blur.edge[ring[k]], blur.mean[ring[k]]
         radii, shares = blur.radii[ring[k]], blur.weights[ring[k]]
-        rho, low, high = footprint(B, k, G, c, reach, Q, M, W)
+        rho, low, high, m, widening = footprint(B, k, G, c, reach, blur.variance[ring[k]], Q, M, W)
         if rho < 0.0:
             continue
         n, r = G.normal[c], B.frame[k, 0]
         cos_g = -(n[0] * r[0] + n[1] * r[1] + n[2] * r[2])
         h, nu, nv = G.spacing[c], G.shape[c, 0], G.shape[c, 1]
         area = edge_lines(Q, L)
-        m = samples_per_axis(h, half_width(Q, rho))
         step = h / m
         off_middle = (0.5 * m - m // 2 - 0.5) * step  # from the middle sample to the cell's middle
         strength = factor[k] * cos_g / (m * m)
@@ -424,7 +438,8 @@ def walk(B, beam, chart, factor, blur, ring, G, task, E, images, S):
                 D = path_at(W, a, b, M[0, 0] + x * M[0, 1] + y * M[0, 2])
                 if D <= 0.0:
                     continue
-                density = sample_density(Q, L, area, a, b, D, reach, edge, mean, radii, shares)
+                wide = math.sqrt(D * D + widening)
+                density = sample_density(Q, L, area, a, b, wide, reach, edge, mean, radii, shares)
                 if density <= 0.0:
                     continue
                 seen = (

@@ -33,8 +33,9 @@ class Meanings(NamedTuple):
 def make_meanings(scene: Scene) -> Meanings:
     """Say what each triangle is to a ray.
 
-    Flat panels are mirrors of their own; a smooth reflector is one mirror, whose normals run on
-    across its facets. A receiver that is no reflector is lit on the side of its normal only.
+    Flat and figured panels are mirrors of their own; another smooth reflector is one mirror, whose
+    normals run on across its facets. A receiver that is no reflector is lit on the side of its
+    normal only.
 
     Parameters
     ----------
@@ -51,9 +52,13 @@ def make_meanings(scene: Scene) -> Meanings:
     back = np.full(len(panel), BLOCKED, np.int32)
     mirrors = panel >= 0
     if mirrors.any():
-        flat = scene.panels.flat[panel[mirrors]]
-        # Numbers of flat panels first, then of smooth surfaces.
-        unit = np.where(flat, panel[mirrors], len(scene.panels) + scene.surface[mirrors])
+        alone = scene.panels.flat.copy()
+        if scene.figures is not None:  # a figure ends with its pane
+            alone |= scene.figures.first >= 0
+        # Numbers of single panels first, then of smooth surfaces.
+        unit = np.where(
+            alone[panel[mirrors]], panel[mirrors], len(scene.panels) + scene.surface[mirrors]
+        )
         front[mirrors] = back[mirrors] = MIRROR - unit
     return Meanings(front, back, np.where(mirrors, chart, -1).astype(np.int32))
 

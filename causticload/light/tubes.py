@@ -146,37 +146,6 @@ def halve(tubes: Tubes, edge: Ints) -> Tubes:
     )
 
 
-def cut_to_length(F: Facets, tubes: Tubes, *, longest_m: float) -> Tubes:
-    """Halve long edges until none is longer than a given length.
-
-    A tube's rays can only report what they meet: a lamp post between the corners of a 60 m bay
-    would go unseen.
-
-    Parameters
-    ----------
-    F : Facets
-        The scene's triangles.
-    tubes : Tubes
-        Any number of tubes.
-    longest_m : float
-        Longest edge that may remain, > 0. [m]
-
-    Returns
-    -------
-    tubes : Tubes
-        As many as it takes, in no particular order.
-    """
-    done: list[Tubes] = []
-    while len(tubes.facet):
-        corner = np.einsum("nij,njk->nik", tubes.bary, F.corner[tubes.facet])
-        length = np.linalg.norm(np.roll(corner, -1, axis=1) - corner, axis=2)
-        edge = np.argmax(length, axis=1)
-        long = length[np.arange(len(edge)), edge] > longest_m
-        done.append(tubes.take(~long))
-        tubes = halve(tubes.take(long), edge[long])
-    return Tubes(*(np.concatenate(a) for a in zip(*done, strict=True))) if done else tubes
-
-
 @njit(cache=True, nogil=True, error_model="numpy")
 def _frame_beam(start, direction, chief, frame):
     """Chief ray and frame of one beam from its corner rays."""
@@ -235,7 +204,7 @@ def _light_tubes(F, R, T, s, B, outcome):
                 v = 0.5 * (T.bary[k, a, 1] + T.bary[k, b, 1])
                 w = 0.5 * (T.bary[k, a, 2] + T.bary[k, b, 2])
             position_at(F, t, u, v, w, x)
-            normal_at(F, t, u, v, w, n)
+            normal_at(F, t, T.sheet[k], u, v, w, n)
             cos_n = side * (n[0] * s[0] + n[1] * s[1] + n[2] * s[2])
             if cos_n <= 0.0:
                 outcome[k] = TURNED_AWAY
@@ -251,7 +220,7 @@ def _light_tubes(F, R, T, s, B, outcome):
         u = (T.bary[k, 0, 0] + T.bary[k, 1, 0] + T.bary[k, 2, 0]) / 3.0
         v = (T.bary[k, 0, 1] + T.bary[k, 1, 1] + T.bary[k, 2, 1]) / 3.0
         w = (T.bary[k, 0, 2] + T.bary[k, 1, 2] + T.bary[k, 2, 2]) / 3.0
-        normal_at(F, t, u, v, w, n)
+        normal_at(F, t, T.sheet[k], u, v, w, n)
         cos_theta = min(1.0, abs(n[0] * s[0] + n[1] * s[1] + n[2] * s[2]))
         _s_axis(d, n, B.s_axis[k])
         B.before[k, :] = 0.0
@@ -321,51 +290,57 @@ def image_on_plane(start, direction, chief, frame, o, n, Q):
 
 
 @njit(cache=True, nogil=True, error_model="numpy")
-def _image_errors(B, o, n, error, longest, depth):
+def _image_errors(B, beam, o, n, error, longest, depth):
     Q, M = np.empty((3, 2)), np.empty((3, 2))
-    for k in range(depth.size):
+    for p in range(depth.size):
+        k = beam[p]
         near, far = image_on_plane(
-            B.start[k, :3], B.direction[k, :3], B.chief[k], B.frame[k], o[k], n[k], Q
+            B.start[k, :3], B.direction[k, :3], B.chief[k], B.frame[k], o[p], n[p], Q
         )
         mid_near, _ = image_on_plane(
-            B.start[k, 3:], B.direction[k, 3:], B.chief[k], B.frame[k], o[k], n[k], M
+            B.start[k, 3:], B.direction[k, 3:], B.chief[k], B.frame[k], o[p], n[p], M
         )
         if near < 0.0 or mid_near < 0.0:
-            depth[k] = -1.0
+            depth[p] = -1.0
             continue
-        depth[k] = 0.5 * (near + far)
+        depth[p] = 0.5 * (near + far)
         for e in range(3):
             a, b = e, (e + 1) % 3
-            error[k, e] = math.hypot(
+            error[p, e] = math.hypot(
                 M[e, 0] - 0.5 * (Q[a, 0] + Q[b, 0]), M[e, 1] - 0.5 * (Q[a, 1] + Q[b, 1])
             )
-            longest[k, e] = math.hypot(Q[a, 0] - Q[b, 0], Q[a, 1] - Q[b, 1])
+            longest[p, e] = math.hypot(Q[a, 0] - Q[b, 0], Q[a, 1] - Q[b, 1])
 
 
-def image_errors(beams: Beams, *, o: Floats, n: Floats) -> tuple[Floats, Floats, Floats]:
+def image_errors(
+    beams: Beams, beam: Ints, *, o: Floats, n: Floats
+) -> tuple[Floats, Floats, Floats]:
     """How far three corner rays misplace the middles of the image's edges.
 
     Parameters
     ----------
     beams : Beams
-        ``k`` beams.
-    o, n : (k, 3) float
-        A point and the unit normal of the plane that each beam lands on.
+        Any number of beams.
+    beam : (p,) int
+        Row of the beam, one for each pair of a beam and a plane.
+    o, n : (p, 3) float
+        A point and the unit normal of the plane.
 
     Returns
     -------
-    error : (k, 3) float
+    error : (p, 3) float
         Distance across the beam between the image of an edge's middle and the middle of the
         image's edge. [m]
-    length : (k, 3) float
+    length : (p, 3) float
         Length of the image's edges across the beam. [m]
-    depth : (k,) float
+    depth : (p,) float
         Distance to the image along the chief ray; -1 where a ray misses the plane's front. [m]
     """
-    k = len(beams.chief)
-    error, length, depth = np.zeros((k, 3)), np.zeros((k, 3)), np.empty(k)
+    p = len(beam)
+    error, length, depth = np.zeros((p, 3)), np.zeros((p, 3)), np.empty(p)
     _image_errors(
         beams,
+        beam,
         np.ascontiguousarray(o, dtype=float),
         np.ascontiguousarray(n, dtype=float),
         error,

@@ -8,7 +8,7 @@ from typing import Any
 
 import numpy as np
 
-from causticload.hazard.cautions import cautions_for
+from causticload.hazard.cautions import Protects, cautions_for
 from causticload.hazard.criteria import Criterion
 from causticload.hazard.exceed import CriterionMap
 from causticload.light.prepare import LitScene
@@ -194,9 +194,15 @@ def summarise(
             "agree_within_three_standard_errors": sum(bool(c.agrees) for c in checks),
         },
         "assumed": list(assumed),
-        "cautions": list(cautions_for({c.protects for c in criteria.criteria})),
+        "cautions": list(cautions_for(_protected(criteria, year))),
         "seconds": seconds,
     }
+
+
+def _protected(criteria: CriterionMap, year: Year) -> set[Protects]:
+    """Whom and what the findings are about."""
+    eyes: set[Protects] = {"people: eyes"} if year.study.observers else set()
+    return {c.protects for c in criteria.criteria} | eyes
 
 
 def _year_ledger(plan: Sequence[DayPlan], days: Sequence[DayResult]) -> dict[str, float]:

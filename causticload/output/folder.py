@@ -4,6 +4,7 @@ from __future__ import annotations
 
 import json
 import warnings
+from collections.abc import Callable
 from datetime import UTC, datetime
 from importlib.metadata import PackageNotFoundError, version
 from pathlib import Path
@@ -13,13 +14,22 @@ import numpy as np
 import pyvista as pv
 
 from causticload.errors import CausticloadError, ResultError
+from causticload.hazard.further import SurfaceHistory
+from causticload.hazard.histories import History
 from causticload.output import meshes, pictures, tables
 from causticload.output.colours import round_end
 from causticload.output.days import DayStore
 from causticload.output.files import to_json, working_in, write_text, write_whole
-from causticload.output.records import to_episode, to_record, to_season
+from causticload.output.records import (
+    to_episode,
+    to_finding,
+    to_observer,
+    to_record,
+    to_season,
+)
 from causticload.output.results import ReceiverYear, Year
 from causticload.scene.model import Bools, Floats, Scene
+from causticload.sky.position import sun_direction
 from causticload.study import input_hashes, read_study, write_study
 
 __all__ = ["DayStore", "read_year", "save_year", "working_in"]
@@ -82,6 +92,7 @@ def save_year(year: Year, path: Path) -> Path:
     pictures.year_pictures(year, path / "figures")
     _save_chart_rows(year, path)
     _save_panels(scene, path)
+    _save_histories(year, path)
     write_study(year.study, path / "study.toml")
     write_text(path / "summary.json", to_json(_full_summary(year)))
     return path
@@ -156,16 +167,32 @@ def _save_arrays(
     )
     write_whole(path / "receivers.vtp", receivers.save)
     r = scene.reflectors
+    focus, sun = _focus_at_worst(year, scene)
     facade = meshes.facade_grid(
         scene,
         {
             "panel [number]": scene.panel[r],
             "contribution to the worst peak [W/m2]": year.contribution[scene.panel[r]],
             "curvature [1/m]": scene.curvature[r].mean(axis=1),
+            **focus,
         },
-        notes,
+        {**notes, "sun of the focal distances": sun},
     )
     write_whole(path / "facade.vtp", facade.save)
+
+
+def _focus_at_worst(year: Year, scene: Scene) -> tuple[dict[str, Floats], str]:
+    """Focal distances under the sun of the worst peak that was looked at closely, and that sun."""
+    check = next((e.check for e in year.episodes if e.check is not None), None)
+    if check is None:
+        return {}, "none: no peak was looked at closely"
+    direction = sun_direction(
+        np.radians([check.sun_azimuth]),
+        np.radians([check.sun_elevation]),
+        north_rad=scene.north_rad,
+    )
+    sun = f"azimuth {check.sun_azimuth:.2f}, elevation {check.sun_elevation:.2f} degrees"
+    return meshes.focus_arrays(scene, direction[0]), sun
 
 
 def _save_chart_rows(year: Year, path: Path) -> None:
@@ -187,6 +214,48 @@ def _save_chart_rows(year: Year, path: Path) -> None:
             np.savez_compressed(file, **arrays)
 
     write_whole(path / "chart.npz", write)
+
+
+def _save_histories(year: Year, path: Path) -> None:
+    """Loads and temperatures at the worst peak of each season looked at closely."""
+    numbers = sorted(year.histories)
+    each = [year.histories[n] for n in numbers]
+    arrays: dict[str, Any] = {
+        "season": np.array(numbers, dtype=np.int32),
+        "start": np.cumsum([0, *(len(h.surface_c) for h in each)]),
+    }
+    columns: dict[str, Callable[[SurfaceHistory], Any]] = {
+        "time": lambda h: h.loads.time,
+        "reflected": lambda h: h.loads.reflected,
+        "direct": lambda h: h.loads.direct,
+        "diffuse": lambda h: h.loads.diffuse,
+        "air_c": lambda h: h.loads.air_c,
+        "wind_ms": lambda h: h.loads.wind,
+        "surface_c": lambda h: h.surface_c,
+        "without_c": lambda h: h.without_c,
+    }
+    for key, pick in columns.items():
+        arrays[key] = np.concatenate([pick(h) for h in each] or [np.zeros(0)])
+
+    def write(target: Path) -> None:
+        with target.open("wb") as file:
+            np.savez_compressed(file, **arrays)
+
+    write_whole(path / "histories.npz", write)
+
+
+def _read_histories(folder: Path) -> dict[int, SurfaceHistory]:
+    with np.load(folder / "histories.npz") as file:
+        found = {}
+        for k, number in enumerate(file["season"]):
+            part = slice(int(file["start"][k]), int(file["start"][k + 1]))
+            loads = ("time", "reflected", "direct", "diffuse", "air_c", "wind_ms")
+            found[int(number)] = SurfaceHistory(
+                History(*(file[key][part] for key in loads)),
+                file["surface_c"][part],
+                file["without_c"][part],
+            )
+        return found
 
 
 def _save_panels(scene: Scene, path: Path) -> None:
@@ -216,6 +285,8 @@ def _full_summary(year: Year) -> dict[str, Any]:
         **year.summary,
         "inputs_sha256": input_hashes(year.study),
         "libraries": {name: _version(name) for name in LIBRARIES},
+        "observers": to_record(year.observers),
+        "findings": [to_record(year.findings[n]) for n in sorted(year.findings)],
         "seasons": to_record(year.seasons),
         "episodes": to_record(year.episodes),
     }
@@ -306,11 +377,13 @@ def read_mesh(path: Path) -> pv.PolyData:
 
 
 def _rebuild(folder: Path, summary: dict[str, Any]) -> Year:
-    for name in ("receivers.vtp", "facade.vtp", "chart.npz", "study.toml"):
+    for name in ("receivers.vtp", "facade.vtp", "chart.npz", "histories.npz", "study.toml"):
         if not (folder / name).is_file():
             raise ResultError(f"{name} is missing", where=str(folder), hint="Run the year again.")
     episodes = [to_episode(r) for r in summary.pop("episodes")]
     seasons = [to_season(r) for r in summary.pop("seasons")]
+    findings = {r["season"]: to_finding(r) for r in summary.pop("findings")}
+    observers = [to_observer(r) for r in summary.pop("observers")]
     facade = read_mesh(folder / "facade.vtp")
     panel = np.asarray(facade.cell_data["panel [number]"])
     load = np.asarray(facade.cell_data["contribution to the worst peak [W/m2]"])
@@ -324,6 +397,9 @@ def _rebuild(folder: Path, summary: dict[str, Any]) -> Year:
         summary=summary,
         contribution=contribution,
         days=_read_chart_rows(folder),
+        findings=findings,
+        histories=_read_histories(folder),
+        observers=observers,
     )
 
 

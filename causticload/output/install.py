@@ -6,6 +6,7 @@ import os
 import sys
 import zipfile
 from collections.abc import Iterator
+from importlib.util import find_spec
 from pathlib import Path
 
 from causticload.errors import InputError
@@ -17,14 +18,15 @@ HOSTS = ("blender",)
 
 
 def _source() -> Path:
-    folder = Path(__file__).resolve().parents[2] / "addon" / NAME
-    if not (folder / "__init__.py").is_file():
+    """Folder of the add-on, which is installed beside the engine; it is found, not imported."""
+    spec = find_spec(NAME)
+    if spec is None or spec.origin is None:
         raise InputError(
             "this installation of causticload does not hold the add-on",
-            where=str(folder),
-            hint="Install from a copy of the repository.",
+            where=NAME,
+            hint="Install causticload again.",
         )
-    return folder
+    return Path(spec.origin).parent
 
 
 def _files(source: Path) -> list[Path]:

@@ -10,16 +10,18 @@ import numpy as np
 from causticload.output import meshes, pictures
 from causticload.output.colours import round_end
 from causticload.output.files import to_json, write_text, write_whole
-from causticload.output.results import Instant
+from causticload.output.results import Instant, ReceiverInstant
 
 
-def instant_record(instant: Instant) -> dict[str, Any]:
+def instant_record(instant: Instant, *, limits: bool = True) -> dict[str, Any]:
     """Say an instant in plain records.
 
     Parameters
     ----------
     instant : Instant
         The instant.
+    limits : bool
+        Whether to work out what unknown angular laws leave open; it takes some time.
 
     Returns
     -------
@@ -36,6 +38,7 @@ def instant_record(instant: Instant) -> dict[str, Any]:
                 "kind": r.kind,
                 "points": len(r.areas),
                 "peak_reflected_W_m2": float(r.reflected.max(initial=0.0)),
+                **_limits(r, wanted=limits),
                 "peak_place_m": [float(x) for x in r.points[top]] if len(r.points) else None,
                 "most_images": int(r.images.max(initial=0)),
                 "reflected_W": float((r.reflected * r.areas).sum()),
@@ -59,6 +62,13 @@ def instant_record(instant: Instant) -> dict[str, Any]:
         "seconds": instant.seconds,
         "assumed": list(instant.assumed),
     }
+
+
+def _limits(r: ReceiverInstant, *, wanted: bool) -> dict[str, float]:
+    if not wanted:
+        return {}
+    low, high = r.peak_limits
+    return {"peak_reflected_low_W_m2": low, "peak_reflected_high_W_m2": high}
 
 
 def save_instant(instant: Instant, folder: Path) -> Path:

@@ -12,6 +12,7 @@ import pyvista as pv
 import trimesh
 
 from causticload.output.colours import MARK, NEUTRAL, REFLECTOR, Colours, map_colours
+from causticload.scene.focus import focal_distances
 from causticload.scene.model import Bools, Chart, Floats, Ints, Scene
 
 # Coloured copies stand this far off the surface they belong to, or the two would flicker.
@@ -129,6 +130,26 @@ def facade_grid(scene: Scene, arrays: Mapping[str, Any], notes: Mapping[str, str
     T = scene.triangles[scene.reflectors] + scene.origin
     faces = np.column_stack([np.full(len(T), 3), np.arange(3 * len(T)).reshape(-1, 3)]).ravel()
     return _with_arrays(pv.PolyData(T.reshape(-1, 3), faces), arrays, notes)
+
+
+def focus_arrays(scene: Scene, sun_direction: Floats) -> dict[str, Floats]:
+    """Focal distances of the facade under one sun, for :func:`facade_grid`.
+
+    Parameters
+    ----------
+    scene : Scene
+        The scene.
+    sun_direction : (3,) float
+        Unit vector to the sun, scene frame.
+
+    Returns
+    -------
+    arrays : dict of str to (k,) float
+        Metres along the reflected ray; negative where light spreads from a virtual focus, nan
+        where there is none within 100 km.
+    """
+    focus = focal_distances(scene, sun_direction)
+    return {"focal tangential [m]": focus.tangential, "focal sagittal [m]": focus.sagittal}
 
 
 def _with_arrays(

@@ -9,7 +9,20 @@ from typing import Any
 
 import numpy as np
 
-from causticload.hazard.findings import Contributor, Episode, HotSpot, PeakCheck, Season
+from causticload.hazard.findings import (
+    Confidence,
+    Contributor,
+    Episode,
+    Finding,
+    HotSpot,
+    LeastPanels,
+    ObserverFinding,
+    PeakCheck,
+    Season,
+    Sight,
+    SkinFinding,
+    SurfaceFinding,
+)
 
 
 def to_record(value: Any) -> Any:
@@ -103,5 +116,58 @@ def to_season(r: Mapping[str, Any]) -> Season:
             "spans": tuple((date.fromisoformat(a), date.fromisoformat(b)) for a, b in r["spans"]),
             "clock": tuple(r["clock"]),
             "episodes": tuple(r["episodes"]),
+        }
+    )
+
+
+def to_finding(r: Mapping[str, Any]) -> Finding:
+    """Rebuild what a season was found to do.
+
+    Parameters
+    ----------
+    r : mapping
+        From :func:`to_record`.
+
+    Returns
+    -------
+    finding : Finding
+        The same as before.
+    """
+    confidence, least = r["confidence"], r["least_panels"]
+    return Finding(
+        season=r["season"],
+        confidence=Confidence(grade=confidence["grade"], reasons=tuple(confidence["reasons"])),
+        least_panels=LeastPanels(**{**least, "panels": tuple(least["panels"])}),
+        skin=SkinFinding(**r["skin"]) if r["skin"] else None,
+        surface=SurfaceFinding(**r["surface"]) if r["surface"] else None,
+    )
+
+
+def to_observer(r: Mapping[str, Any]) -> ObserverFinding:
+    """Rebuild what an observer meets.
+
+    Parameters
+    ----------
+    r : mapping
+        From :func:`to_record`.
+
+    Returns
+    -------
+    finding : ObserverFinding
+        The same as before.
+    """
+    worst = r["worst"]
+    return ObserverFinding(
+        **{
+            **r,
+            "worst_day": date.fromisoformat(r["worst_day"]) if r["worst_day"] else None,
+            "spans": tuple((date.fromisoformat(a), date.fromisoformat(b)) for a, b in r["spans"]),
+            "clock": tuple(r["clock"]) if r["clock"] else None,
+            "daily": tuple((date.fromisoformat(d), n, m) for d, n, m in r["daily"]),
+            "worst": Sight(
+                **{**worst, "time": _time(worst["time"]), "place": tuple(worst["place"])}
+            )
+            if worst
+            else None,
         }
     )

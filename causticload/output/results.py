@@ -9,7 +9,8 @@ from typing import Any
 import numpy as np
 from numpy.typing import NDArray
 
-from causticload.hazard.findings import Episode, Season
+from causticload.hazard.findings import Episode, Finding, ObserverFinding, Season
+from causticload.hazard.further import SurfaceHistory
 from causticload.scene.model import Floats, Ints, Scene
 from causticload.study.model import Study
 
@@ -40,6 +41,16 @@ class ReceiverInstant:
     images: Ints  # (n,) reflected images of the sun in view
     first: int  # number of the receiver's first point in the scene
     _direct: Any = None  # callable that gives (n,) W/m² when first asked
+    _limits: Any = (1.0, 1.0)  # or callable that gives both factors when first asked
+
+    @property
+    def peak_limits(self) -> tuple[float, float]:
+        """Least and largest load at the hottest point that unknown angular laws leave. [W/m²]"""
+        if callable(self._limits):
+            self._limits = self._limits()
+        low, high = self._limits
+        peak = float(self.reflected.max(initial=0.0))
+        return low * peak, high * peak
 
     @property
     def direct(self) -> Floats:
@@ -95,6 +106,9 @@ class Year:
     seasons: list[Season]  # worst first
     summary: dict[str, Any]  # what summary.json holds
     contribution: Floats  # (panels,) W/m² at the worst episode's peak
+    findings: dict[int, Finding] = field(default_factory=dict)  # by number of the season
+    histories: dict[int, SurfaceHistory] = field(default_factory=dict)  # by number of the season
+    observers: list[ObserverFinding] = field(default_factory=list)
     scene: Scene | None = None  # None when read from a folder without its meshes
     days: list[dict[str, Any]] = field(default_factory=list)
     # one row per day and date: date, worst load per receiver by time, for charts

@@ -9,7 +9,8 @@ from typing import TYPE_CHECKING, Any
 import numpy as np
 
 from causticload.hazard.cautions import cautions_for
-from causticload.hazard.findings import Episode, PeakCheck, Season
+from causticload.hazard.eyes import EYE_CLASS_WORDS, EyeClass
+from causticload.hazard.findings import Episode, Finding, ObserverFinding, PeakCheck, Season
 from causticload.output import words
 from causticload.output.results import Instant, Year
 
@@ -65,8 +66,15 @@ def summarise_year(year: Year) -> str:
     by_number = {e.number: e for e in year.episodes}
     for season in year.seasons[:MOST_SEASONS]:
         lines += ["", *describe_season(season, by_number[season.worst], zone)]
+        lines += [
+            _wrap(text, "   ") for text in finding_sentences(year.findings.get(season.number))
+        ]
     if len(year.seasons) > MOST_SEASONS:
         lines += ["", f"  and {len(year.seasons) - MOST_SEASONS} more; see episodes.csv."]
+    if year.observers:
+        lines += ["", "Observers"]
+        for observer in year.observers:
+            lines += [_wrap(text, "  ") for text in observer_sentences(observer, zone)]
     lines += ["", "Largest reflected load on each receiver"]
     width = max([len(r["name"]) for r in s["receivers"]], default=0)
     for r in sorted(s["receivers"], key=lambda r: -r["peak_reflected_W_m2"]):
@@ -131,6 +139,81 @@ def describe_season(season: Season, worst: Episode, zone: str) -> list[str]:
     return lines
 
 
+def finding_sentences(finding: Finding | None) -> list[str]:
+    """Say what a season's worst peak does, what would cure it, and how sure that is.
+
+    Parameters
+    ----------
+    finding : Finding or None
+        None: the season was not looked at closely.
+
+    Returns
+    -------
+    sentences : list of str
+        One paragraph each.
+    """
+    if finding is None:
+        return ["Not looked at closely: the peak is the grid's own and was not counted."]
+    said = [finding.skin.text] if finding.skin else []
+    if finding.surface:
+        said.append(finding.surface.text)
+    said.append(finding.least_panels.text)
+    confidence = finding.confidence
+    return [*said, f"Confidence: {confidence.grade}. {' '.join(confidence.reasons)}"]
+
+
+def observer_sentences(observer: ObserverFinding, zone: str) -> list[str]:
+    """Say what an observer meets in the year.
+
+    Parameters
+    ----------
+    observer : ObserverFinding
+        The observer.
+    zone : str
+        IANA time zone.
+
+    Returns
+    -------
+    sentences : list of str
+        One paragraph each, the first with the observer's name.
+    """
+    sight = observer.worst
+    if sight is None:
+        return [f"{observer.name}: no image of the sun came into view under these assumptions."]
+    said = []
+    if observer.clock and observer.worst_day:
+        runs = words.runs(observer.spans, observer.after_image_days)
+        said.append(
+            f"{observer.name}: a look can leave an after-image on about "
+            f"{observer.after_image_days:.0f} days ({runs}), between {observer.clock[0]} and "
+            f"{observer.clock[1]} local clock time, for up to "
+            f"{words.length(observer.after_image_most)} a day ({words.day(observer.worst_day)}) "
+            f"and {words.length(observer.after_image_minutes)} in "
+            f"the year, somewhere on its path."
+        )
+    else:
+        said.append(f"{observer.name}: no look leaves an after-image under these assumptions.")
+    said.append(
+        f"Worst at {words.place(sight.place)} on {words.moment(sight.time, zone)}: {sight.images} "
+        f"bright area{'s' if sight.images != 1 else ''}, the worst {sight.subtense_mrad:.1f} mrad "
+        f"across and {sight.angle_deg:.0f}° from the line of sight; {words.load(sight.corneal)} at "
+        f"the eye; {EYE_CLASS_WORDS[EyeClass(sight.eye_class)]}. Veil {sight.veil:,.0f} cd/m² at "
+        f"the age of {observer.age:.0f}, which leaves {100 * sight.contrast_left:.0f} % of the "
+        f"contrast of a sunlit street."
+    )
+    if observer.burn_minutes > 0.0:
+        said.append(
+            f"For {words.length(observer.burn_minutes)} in the year a look can burn the retina "
+            f"before a person blinks."
+        )
+    if observer.rogue_minutes > 0.0:
+        said.append(
+            f"Over 500 cd/m² by 10 E/theta² for {words.length(observer.rogue_minutes)} in the year "
+            f"(Hassall 1991, from memory)."
+        )
+    return said
+
+
 def _is_total(episode: Episode) -> bool:
     return episode.peak > episode.reflected * (1.0 + 1e-9)
 
@@ -158,12 +241,16 @@ def describe_check(check: PeakCheck) -> str:
         if check.agrees
         else "which DISAGREE by more than three standard errors: do not rely on this peak"
     )
+    left = ""
+    if check.reflected_low is not None and check.reflected_high is not None:
+        left = _left_open(check.reflected, check.reflected_low, check.reflected_high)
+        left = f" It may be {left}." if left else ""
     return (
         f"Reflected light {words.load(check.reflected)} with {check.images} "
         f"image{'s' if check.images != 1 else ''} of the sun in view. Over a disc of "
         f"{1000 * check.disc_radius:.0f} mm radius ray tubes give {check.disc_mean:,.0f} and "
         f"{check.rays:,} random rays {check.count_mean:,.0f} ± {check.count_error:,.0f} W/m², "
-        f"{verdict}."
+        f"{verdict}.{left}"
     )
 
 
@@ -222,6 +309,9 @@ def summarise_instant(instant: Instant) -> str:
             f"  {r.name:<{width}}  {words.load(float(r.reflected[top])):>12}  "
             f"{r.reflected[top] / sun.beam:5.2f} suns  {r.images[top]} images  at {where}"
         )
+        left = _left_open(float(r.reflected[top]), *r.peak_limits)
+        if left:
+            lines.append(f"  {'':<{width}}  {left}")
     L = instant.ledger
     taken = L["intercepted"]
     if taken > 0.0:
@@ -306,12 +396,56 @@ def summarise_inspect(report: Mapping[str, Any]) -> str:
         "Curvature", [f"{c['surface']}: {c['sentence']}" for c in report.get("curvature", [])]
     )
     lines += _listed(
+        "Panes that are not flat", [_figure_line(f) for f in report.get("figures", [])]
+    )
+    focus = report.get("focus")
+    if focus:
+        lines += _listed(
+            f"Focus, sun at azimuth {focus['sun_azimuth']:.1f}°, "
+            f"elevation {focus['sun_elevation']:.1f}°",
+            [
+                f"{100.0 * focus['share']:.0f} % of the {focus['lit_m2']:,.0f} m² in the sun "
+                "gather their light to at least twice its density where it meets a receiver "
+                "(before the sun's own size blurs it; single reflection, outermost pane)."
+            ],
+        )
+    lines += _listed(
         "Found in the model",
         [f"{f['message']} {f.get('hint', '')}".strip() for f in report.get("faults", [])],
     )
     lines += _listed("Assumed", report.get("assumed", []))
     lines += ["", f"Rays will be traced by {report.get('tracer', 'nothing yet')}."]
     return "\n".join(lines)
+
+
+def _left_open(load: float, low: float, high: float) -> str:
+    """Say what an unknown angular law leaves open; nothing where that is nothing."""
+    if not high - low > 0.01 * load:
+        return ""
+    return (
+        f"{low:,.0f} to {high:,.0f} W/m² by what the data leave open of reflectance at slanting "
+        "angles"
+    )
+
+
+def _figure_line(f: Mapping[str, Any]) -> str:
+    """Say how one pane of a surface's panels bends."""
+    said = [f"{f['surface']}, pane {f['pane']} of {f['panels']} panels ({f['figure']})"]
+    if f["short_focal_m"]:
+        low, high = f["bow_mm"]
+        said.append(
+            f"bow {low:+.2f} mm" if high - low < 0.005 else f"bow {low:+.2f}…{high:+.2f} mm"
+        )
+        for name in ("short", "long"):
+            if f[f"{name}_focal_m"]:
+                nearest, _, farthest = f[f"{name}_focal_m"]
+                span = f"{nearest:.1f} m"
+                if abs(farthest - nearest) > 0.05 * abs(nearest):
+                    span = f"{nearest:.1f}…{farthest:.1f} m"
+                said.append(f"{name}er focal length {span}")
+    if f["wave_focal_m"]:
+        said.append(f"roller wave focuses at {f['wave_focal_m'][0]:.1f} m")
+    return "; ".join(said) + "."
 
 
 def summarise_finishes(rows: Sequence[Mapping[str, Any]]) -> str:

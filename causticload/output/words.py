@@ -2,6 +2,7 @@
 
 from __future__ import annotations
 
+from collections.abc import Sequence
 from datetime import UTC, date, datetime
 from zoneinfo import ZoneInfo
 
@@ -23,6 +24,7 @@ MONTHS = (
     "November",
     "December",
 )
+WHOLE_YEAR = 364.0  # days; one more or less is the calendar's
 NO_EXCEEDANCE = "No exceedance found under these assumptions."
 
 
@@ -112,7 +114,27 @@ def spans(season: Season) -> str:
     text : str
         Runs joined by "and".
     """
-    return " and ".join(span(a, b) for a, b in season.spans)
+    return runs(season.spans, season.days)
+
+
+def runs(found: Sequence[tuple[date, date]], days: float) -> str:
+    """Write runs of days: ``19 February to 21 March and 4 August to 2 September``.
+
+    Parameters
+    ----------
+    found : sequence of (date, date)
+        First and last day of each run.
+    days : float
+        Calendar days in all.
+
+    Returns
+    -------
+    text : str
+        "all year" where no day is left out.
+    """
+    if days >= WHOLE_YEAR:
+        return "all year"
+    return " and ".join(span(a, b) for a, b in found)
 
 
 def load(value: float) -> str:

@@ -14,6 +14,7 @@ from causticload.scene.charts import make_charts, number_charts
 from causticload.scene.faults import check_extent, check_sheets, clean
 from causticload.scene.figure import shape_reflectors
 from causticload.scene.model import Bools, Chart, Fault, Floats, Ints, Scene, Surface
+from causticload.scene.pane_figure import figure_panes
 from causticload.scene.reach import reach_bounds
 from causticload.scene.read import Part, bounds, read_parts
 from causticload.scene.roles import Roles, assign_roles, list_names
@@ -56,7 +57,6 @@ def build_scene(study: Study, *, sun_directions: Floats | None = None) -> Scene:
         hold.
     """
     parts = read_parts(study.model)
-    _refuse_figures(study)
     roles = assign_roles(parts, study.surfaces, study)
     _require_reflector(roles, parts, study)
     stack = stack_parts(roles)
@@ -71,7 +71,15 @@ def build_scene(study: Study, *, sun_directions: Floats | None = None) -> Scene:
         )
     origin = _home(kept.triangles[reflects])
     local = replace(kept, triangles=kept.triangles - origin)
-    figure = shape_reflectors(local, reflects, roles)
+    figure = shape_reflectors(local, reflects, roles, cold_bent=_cold_bent(roles.surfaces, study))
+    figured = figure_panes(
+        triangles=local.triangles[reflects],
+        panel=figure.panel[reflects],
+        panels=figure.panels,
+        surfaces=roles.surfaces,
+        figures=study.figures,
+        site_elevation_m=study.site.elevation,
+    )
     charts, chart, spaced, spacing_said = _lay_out(local, reflects, roles.surfaces, sun_directions)
     low, high = _extent(roles)
     return Scene(
@@ -99,20 +107,26 @@ def build_scene(study: Study, *, sun_directions: Floats | None = None) -> Scene:
             *figure.faults,
             *_no_receiver(roles),
         ),
-        assumed=(*roles.assumed, *figure.assumed, *spacing_said),
+        assumed=(*roles.assumed, *figure.assumed, *figured.assumed, *spacing_said),
         source_triangle=local.source,
+        figures=figured.figures,
     )
 
 
-def _refuse_figures(study: Study) -> None:
-    """Say no to what would otherwise be dropped in silence."""
-    for k, rule in enumerate(study.surfaces, start=1):
-        if rule.figure is not None:
+def _cold_bent(surfaces: Sequence[Surface], study: Study) -> Bools:
+    """Which surfaces are of panes bent to their corners, (s,)."""
+    bent = np.zeros(len(surfaces), np.bool_)
+    for i, surface in enumerate(surfaces):
+        settings = study.figures[surface.figure].settings if surface.figure else {}
+        bent[i] = bool(settings.get("cold_bent", False))
+        if bent[i] and surface.form == "smooth":
             raise StudyError(
-                f"figure {rule.figure!r}: surface figures are not followed by this version",
-                where=f"surface[{k}].figure",
-                hint="Take the key out: panes are then flat, or smooth by their mesh.",
+                f"{surface.name!r} is smooth: its normals run on from pane to pane, those of "
+                "cold-bent panes do not",
+                where=f"surface {surface.name!r}: figure",
+                hint='Give its rule form = "flat", or the figure no cold_bent.',
             )
+    return bent
 
 
 def _has_role(surfaces: Sequence[Surface], role: str) -> Bools:

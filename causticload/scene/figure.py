@@ -26,7 +26,9 @@ class Figure:
     assumed: tuple[str, ...]
 
 
-def shape_reflectors(stack: Stack, reflects: Bools, roles: Roles) -> Figure:
+def shape_reflectors(
+    stack: Stack, reflects: Bools, roles: Roles, *, cold_bent: Bools | None = None
+) -> Figure:
     """Find normals, curvature and panels of the reflectors.
 
     A smooth surface takes the corner normals of its file where it has good ones, else normals
@@ -40,6 +42,8 @@ def shape_reflectors(stack: Stack, reflects: Bools, roles: Roles) -> Figure:
         Which of them reflect.
     roles : Roles
         Surfaces and rules.
+    cold_bent : (s,) bool, optional
+        Flat surfaces whose quadrilaterals are glass bent to their four corners.
 
     Returns
     -------
@@ -51,6 +55,9 @@ def shape_reflectors(stack: Stack, reflects: Bools, roles: Roles) -> Figure:
     curvature = np.zeros((len(face), 3, 2))
     form_smooth = np.array([s.form == "smooth" for s in roles.surfaces], dtype=np.bool_)
     smooth = reflects & form_smooth[stack.surface]
+    bent = np.zeros(len(face), np.bool_)
+    if cold_bent is not None:
+        bent = reflects & ~smooth & cold_bent[stack.surface]
 
     from_file, faults, assumed = _trusted_normals(stack, smooth, face, roles)
     for rule in np.unique(stack.rule[smooth & ~from_file]):
@@ -70,8 +77,12 @@ def shape_reflectors(stack: Stack, reflects: Bools, roles: Roles) -> Figure:
     rows = np.flatnonzero(reflects)
     panel = np.full(len(face), -1, dtype=np.int32)
     panel[rows], panels = find_panels(
-        stack.triangles[rows], stack.surface[rows], smooth[rows], corner_normals[rows]
+        stack.triangles[rows], stack.surface[rows], (smooth | bent)[rows], corner_normals[rows]
     )
+    if bent.any():
+        own = np.flatnonzero(bent & ~panels.flat[panel])
+        corner_normals[own] = bilinear_normals(stack.triangles[own], panel[own])
+        curvature[own] = curvature_from_normals(stack.triangles[own], corner_normals[own])
     plane = rows[panels.flat[panel[rows]]]
     normal = panels.normal[panel[plane]]
     side = np.sign(np.einsum("ki,ki->k", normal, face[plane]))
@@ -85,6 +96,48 @@ def shape_reflectors(stack: Stack, reflects: Bools, roles: Roles) -> Figure:
         faults=faults,
         assumed=assumed,
     )
+
+
+def bilinear_normals(triangles: Floats, panel: Ints) -> Floats:
+    """Corner normals of quadrilaterals bent to four corners that are not in one plane.
+
+    Glass bent that way follows the bilinear patch, which straight lines rule both ways: its
+    normal at a corner is across the two edges that meet there. On a parallelogram the patch's
+    slope is linear in the plane, so that normals interpolated over the two triangles are those
+    of the patch at every point; the triangles themselves lie off it by at most a quarter of the
+    fourth corner's distance from the plane of the other three.
+
+    Parameters
+    ----------
+    triangles : (k, 3, 3) float
+        Corners. [m]
+    panel : (k,) int
+        Their panels: each of two triangles, or of one, which keeps its plane.
+
+    Returns
+    -------
+    normals : (k, 3, 3) float
+        Unit normals on the side of each face's own.
+    """
+    face, _ = face_normals(triangles)
+    normals = np.repeat(face[:, None], 3, axis=1)
+    order = np.argsort(panel, kind="stable")
+    same = panel[order[:-1]] == panel[order[1:]]
+    a, b = order[:-1][same], order[1:][same]
+    size = np.linalg.norm(triangles[a, 1] - triangles[a, 0], axis=1)
+    gap = np.linalg.norm(triangles[a][:, :, None] - triangles[b][:, None], axis=3)
+    joined = gap < 1e-3 * size[:, None, None]
+    for own, other, shared in ((a, b, joined.any(axis=2)), (b, a, joined.any(axis=1))):
+        partner = joined if own is a else joined.transpose(0, 2, 1)
+        row = np.arange(len(own))
+        tip = triangles[own][row, (~shared).argmax(axis=1)]
+        far = triangles[other][row, (~partner.any(axis=1)).argmax(axis=1)]
+        n = np.cross(tip[:, None] - triangles[own], far[:, None] - triangles[own])
+        length = np.linalg.norm(n, axis=2, keepdims=True)
+        n = np.divide(n, length, out=np.zeros_like(n), where=length > 0.0)
+        n *= np.sign(np.einsum("kci,ki->kc", n, face[own]))[:, :, None]
+        normals[own] = np.where(shared[:, :, None], n, normals[own])
+    return normals
 
 
 def _trusted_normals(

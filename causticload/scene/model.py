@@ -31,6 +31,7 @@ class Surface:
     figure: str | None = None
     spacing: float = 0.0  # m, receivers only; 0: chosen by the charts
     kind: str = ""  # receivers only
+    material: str = ""  # receivers only; empty: the usual one of its kind
     triangles: int = 0
     assumed: tuple[str, ...] = ()  # sentences on what was assumed for this surface
 
@@ -49,6 +50,34 @@ class Panels:
 
     def __len__(self) -> int:
         return len(self.area)
+
+
+@dataclass(frozen=True, kw_only=True)
+class PaneFigures:
+    """How far panes are from flat. ``p`` panels, ``g`` rows: a pane of a panel, outermost first.
+
+    Heights are along the panel's normal, outward positive, over the plane coordinates (x, y) along
+    its width axis and across it, from the middle of its bounding box.
+    """
+
+    first: Ints  # (p,) row of the panel's outermost pane, -1: as the mesh has it
+    count: Ints  # (p,) panes
+    middle: Floats  # (p, 3) m, local
+    height_axis: Floats  # (p, 3) unit, normal x width axis
+    half: Floats  # (p, 2) m, half sizes of the bounding box
+    panel: Ints  # (g,)
+    shape: Ints  # (g,) row of shapes, -1: no bow
+    bow: Floats  # (g,) m, largest deflection
+    wave: Floats  # (g,) m, half of peak to valley
+    wave_number: Floats  # (g, 2) rad/m along width and height
+    phase: Floats  # (g,) rad
+    follow: Ints  # (g,) 1: follow the wave, 0: take its mean over phases, -1: by cost
+    tilt: Floats  # (g, 2) slope along width and height
+    kink: Floats  # (g,) m, lift at the rim of the edges in kinked
+    kink_width: Floats  # (g,) m
+    kinked: Floats  # (p, 4, 3) lines a x + b y + c, the distance inwards [m]; c = inf: none
+    shapes: Floats  # (s, n, n) powers of x and y over the half sizes; the largest value is 1
+    tops: Floats  # (s, 2) where that is, over the half sizes
 
 
 @dataclass(frozen=True, kw_only=True)
@@ -102,6 +131,7 @@ class Scene:
     assumed: tuple[str, ...] = ()  # sentences for the user
     source_triangle: Ints = field(default_factory=lambda: np.zeros(0, np.int32))
     # (m,) row of the triangle in its file's surface, to hand colours back in the file's order
+    figures: PaneFigures | None = None  # None: every pane is as the mesh has it
 
     @property
     def point_count(self) -> int:

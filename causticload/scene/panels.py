@@ -197,7 +197,7 @@ def _measure(
         equal = np.bincount(panel, spread > _SAME_NORMAL, minlength=count) == 0
         flat |= equal
 
-    width = _width_axis(triangles, largest, normal)
+    width = _width_axis(triangles, panel, normal)
     axes = np.stack([width, np.cross(normal, width)], axis=1)
     along = np.einsum("kci,kai->kca", triangles - centroid[panel][:, None], axes[panel])
     low, high = np.full((count, 2), np.inf), np.full((count, 2), -np.inf)
@@ -214,13 +214,21 @@ def _measure(
     )
 
 
-def _width_axis(triangles: Floats, largest: Indices, normal: Floats) -> Floats:
-    """Horizontal axis in each panel's plane; on a level panel, along its longest edge. (p, 3)"""
-    level = np.hypot(normal[:, 0], normal[:, 1]) < _LEVEL
+def _width_axis(triangles: Floats, panel: Indices, normal: Floats) -> Floats:
+    """Horizontal axis in each panel's plane; on a level panel, along its longest side. (p, 3)"""
     axis = np.cross((0.0, 0.0, 1.0), normal)
-    edges = np.roll(triangles[largest], -1, axis=1) - triangles[largest]
-    longest = np.argmax(np.linalg.norm(edges, axis=2), axis=1)
-    edge = edges[np.arange(len(edges)), longest]
-    edge -= np.einsum("pi,pi->p", edge, normal)[:, None] * normal
-    axis = np.where(level[:, None], edge, axis)
+    for p in np.flatnonzero(np.hypot(normal[:, 0], normal[:, 1]) < _LEVEL):
+        axis[p] = _longest_side(triangles[panel == p])
+        axis[p] -= (axis[p] @ normal[p]) * normal[p]
     return axis / np.maximum(np.linalg.norm(axis, axis=1), 1e-300)[:, None]
+
+
+def _longest_side(triangles: Floats) -> Floats:
+    """Longest edge of one triangle only, not of a diagonal between two. (3,)"""
+    vertex = weld(triangles.reshape(-1, 3)).reshape(-1, 3)
+    ends = np.sort(np.stack([vertex, np.roll(vertex, -1, axis=1)], axis=2).reshape(-1, 2), axis=1)
+    _, number, count = np.unique(ends, axis=0, return_inverse=True, return_counts=True)
+    edges = (np.roll(triangles, -1, axis=1) - triangles).reshape(-1, 3)
+    length = np.linalg.norm(edges, axis=1)
+    length[count[number.ravel()] > 1] = -1.0
+    return np.asarray(edges[np.argmax(length)])

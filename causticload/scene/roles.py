@@ -125,7 +125,9 @@ def _with_rule(surface: Surface, rule: SurfaceRule) -> Surface:
         if rule.finish is None:
             surface = replace(surface, assumed=(f'Its finish is taken as "{DEFAULT_FINISH}".',))
     if "receiver" in surface.roles:
-        surface = replace(surface, spacing=rule.spacing or 0.0, kind=rule.kind or "")
+        surface = replace(
+            surface, spacing=rule.spacing or 0.0, kind=rule.kind or "", material=rule.material or ""
+        )
     return surface
 
 

@@ -49,6 +49,7 @@ class SurfaceRule:
     figure: str | None = None
     spacing: float | None = None  # m; None: chosen from the size of the sun's image
     kind: str | None = None  # walkway, roadway, facade, roof, planting, ...
+    material: str | None = None  # of a receiver; None: the usual one of its kind
 
 
 @dataclass(frozen=True, kw_only=True)

@@ -11,6 +11,7 @@ from zoneinfo import ZoneInfo, ZoneInfoNotFoundError
 
 from causticload.errors import StudyError
 from causticload.study import schema
+from causticload.study.figures import check_figure
 from causticload.study.lines import index_lines
 from causticload.study.model import (
     CriterionSpec,
@@ -131,9 +132,7 @@ class _Reader:
             for name, d in data.get("finish", {}).items()
         }
         figures = {
-            name: FigureSpec(
-                name=name, settings=dict(self.take(d, schema.FIGURE, ("figure", name)))
-            )
+            name: self.figure(name, d, ("figure", name))
             for name, d in data.get("figure", {}).items()
         }
         surfaces = tuple(
@@ -231,6 +230,14 @@ class _Reader:
                 hint=f"Figures here: {', '.join(figures) or 'none'}.",
             )
         return SurfaceRule(roles=roles, **table)
+
+    def figure(self, name: str, data: Any, path: tuple[str | int, ...]) -> FigureSpec:
+        """One surface figure."""
+        table = self.take(data, schema.FIGURE, path)
+        wrong = check_figure(table)
+        if wrong is not None:
+            raise self.error(wrong.message, (*path, wrong.key), hint=wrong.hint)
+        return FigureSpec(name=name, settings=dict(table))
 
     def finish(self, name: str, data: Any, path: tuple[str | int, ...]) -> FinishSpec:
         """One own finish."""

@@ -123,6 +123,7 @@ SURFACE = {
     "figure": Key(TEXT, "name of a surface figure", _not_empty),
     "spacing": Key(NUMBER, "sample distance, metres", between(0, 1000, open_low=True)),
     "kind": Key(TEXT, "what it is, for its default criteria", _not_empty),
+    "material": Key(TEXT, "what a receiver is made of, for its temperature", _not_empty),
 }
 FINISH = {
     "solar_reflectance": Key(NUMBER, "at normal incidence, outdoor side", _SHARE),
@@ -144,10 +145,39 @@ FINISH = {
     "base": Key(TEXT, "a built-in finish to start from", _not_empty),
 }
 FIGURE = {
-    "bow_mm": Key(NUMBER, "centre deflection of a pane, outward positive", between(-100, 100)),
+    "bow_mm": Key(NUMBER, "largest deflection of a pane, outward positive", between(-100, 100)),
+    "inner_bow_mm": Key(
+        NUMBER, "the same of the inner panes; that of the outer if not given", between(-100, 100)
+    ),
+    "cavity_pressure_kpa": Key(
+        NUMBER, "isochore over-pressure in a unit's cavities; negative in winter", between(-60, 60)
+    ),
+    "sealed_temperature_c": Key(NUMBER, "of the gas when the unit was sealed", between(-60, 100)),
+    "temperature_c": Key(NUMBER, "of the gas in the cavity now", between(-60, 150)),
+    "sealed_pressure_kpa": Key(
+        NUMBER, "barometer at sealing, reduced to sea level; 101.3", between(87, 109)
+    ),
+    "pressure_kpa": Key(NUMBER, "barometer now, reduced to sea level; 101.3", between(87, 109)),
+    "sealed_altitude_m": Key(
+        NUMBER, "altitude of the factory; that of the site if not given", between(-500, 9000)
+    ),
+    "panes_mm": Key(LIST, "thickness of each pane from outdoors; [6, 6]", _not_empty),
+    "gap_mm": Key("number or list", "width of the cavities; 16"),
     "roller_wave_mm": Key(NUMBER, "peak to valley", between(0, 5)),
     "roller_pitch_mm": Key(NUMBER, "wavelength", between(1, 5000)),
-    "roller_along": Key(TEXT, "direction of the wave", one_of("width", "height")),
+    "roller_along": Key(
+        TEXT, "direction the wave runs in, and edge kinks end", one_of("width", "height")
+    ),
+    "roller_as": Key(
+        TEXT,
+        "waves followed one by one, or their mean over phases; chosen by cost if not given",
+        one_of("waves", "mean"),
+    ),
+    "edge_kink_mm": Key(NUMBER, "lift of the ends' rims, outward positive", between(-5, 5)),
+    "edge_kink_width_mm": Key(NUMBER, "how far in from the rim", between(1, 500)),
+    "tilt_mrad": Key(NUMBER, "rms tilt of panes about each axis, by fixing", between(0, 50)),
+    "seed": Key(WHOLE, "of the random phases and tilts; 1", between(0, 2**31 - 1)),
+    "cold_bent": Key(FLAG, "quadrilaterals out of plane are bent glass, not two flat panes"),
 }
 SKY = {
     "source": Key(TEXT, "clear sky or weather file", one_of("clear", "weather")),

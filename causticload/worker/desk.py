@@ -277,7 +277,7 @@ class Desk:
         ordered = sorted(instant.receivers.values(), key=lambda r: r.first)
         over = np.concatenate([arrays[f"r{k}/over"] for k in range(len(ordered))] or [[]])
         arrays["marks"] = views.mark_quads(project.scene, over.astype(bool))
-        record = instant_record(instant)
+        record = instant_record(instant, limits=False)
         zone = project.study.site.timezone
         time = instant.sun.time
         return {
@@ -326,6 +326,7 @@ class Desk:
     def _yearly(
         self, project: Project, year: Year, key: str, folder: Path | None
     ) -> dict[str, Any]:
+        from causticload.output.text import observer_sentences
         from causticload.worker import listing
 
         return {
@@ -336,6 +337,9 @@ class Desk:
             "seasons": [listing.season_row(s, year) for s in year.seasons],
             "episodes": [listing.episode_row(e, year) for e in year.episodes[:MOST_EPISODES]],
             "episodes_found": len(year.episodes),
+            "observers": [
+                observer_sentences(o, project.study.site.timezone) for o in year.observers
+            ],
             **self._painted(project, year, "peak", ""),
         }
 

@@ -12,6 +12,7 @@ from causticload.errors import InputError
 from causticload.hazard.findings import Episode, Season
 from causticload.output import words
 from causticload.output.results import Year
+from causticload.output.text import finding_sentences
 from causticload.scene.model import Floats
 
 
@@ -109,7 +110,8 @@ def season_row(season: Season, year: Year) -> dict[str, Any]:
     Returns
     -------
     row : dict
-        Ready for JSON; ``worst`` is the number of its worst episode, ``text`` the line itself.
+        Ready for JSON; ``worst`` is the number of its worst episode, ``text`` the line itself,
+        ``found`` sentences on what it does and what would cure it.
     """
     worst = next((e for e in year.episodes if e.number == season.worst), None)
     load = worst.check.total if worst and worst.check else season.peak
@@ -128,6 +130,7 @@ def season_row(season: Season, year: Year) -> dict[str, Any]:
         "minutes_per_year": season.minutes_per_year,
         "peak_W_m2": load,
         "text": text,
+        "found": finding_sentences(year.findings.get(season.number)),
     }
 
 

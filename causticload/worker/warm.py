@@ -34,9 +34,12 @@ def relit(project: Project, study: Study) -> Project | None:
     track = (study.site, study.year.year) != (old.site, old.year.year)
     if study.observers != old.observers or (track and _cut_by_reach(project.scene)):
         return None
+    # Altitude since sealing bows panes.
+    if project.scene.figures is not None and study.site.elevation != old.site.elevation:
+        return None
     sky = Sky.from_study(study)
     scene = replace(project.scene, north_rad=radians(study.site.model_north))
-    lit = replace(project.lit, scene=scene, disc=sky.disc, _rings={})
+    lit = project.lit.under(scene, sky.disc)
     assumed = dict.fromkeys(
         [*sky.assumed, *(a for a in project.assumed if a not in project.sky.assumed)]
     )

@@ -193,3 +193,34 @@ def test_people_come_before_things_and_longer_before_stronger():
 
 def test_no_episodes_no_seasons():
     assert make_seasons([], zone="UTC", day_stride=4) == ([], [])
+
+
+def walking(day, *, peak_at, x=0.0, hours=4):
+    """An episode of some hours whose spot walks 10 m an hour and peaks at a given minute."""
+    first = episode(day)
+    start = np.datetime64(day) + np.timedelta64(10 * 60, "m")
+    path = tuple(
+        replace(
+            spot(0, x + m / 6.0, 0.0, peak=3000.0 + 500.0 * (m == peak_at)),
+            time=start + np.timedelta64(m, "m"),
+        )
+        for m in range(0, 60 * hours + 1, 5)
+    )
+    return replace(
+        first,
+        path=path,
+        start=path[0].time,
+        end=path[-1].time,
+        peak_time=start + np.timedelta64(peak_at, "m"),
+    )
+
+
+def test_a_lasting_caustic_is_one_season_though_its_peak_jumps():
+    days = [date(2025, 6, 1) + timedelta(4 * k) for k in range(6)]
+    jumping = [walking(d, peak_at=5 + 230 * (k % 2)) for k, d in enumerate(days)]
+    _, seasons = make_seasons(jumping, zone="UTC", day_stride=4)
+    assert len(seasons) == 1
+    # The same hours on the same days, but a path 40 m away: another spot.
+    beside = [walking(d, peak_at=5 + 230 * (k % 2), x=40.0) for k, d in enumerate(days)]
+    _, seasons = make_seasons(jumping + beside, zone="UTC", day_stride=4)
+    assert len(seasons) == 2

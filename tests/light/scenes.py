@@ -2,20 +2,20 @@
 
 import numpy as np
 
-from causticload.light.bvh import build_tracer
-from causticload.light.facets import make_facets
-from causticload.light.prepare import LitScene
-from causticload.light.splat import make_grids
-from causticload.light.targets import make_meanings
-from causticload.light.tubes import cut_to_length, whole_facets
+from causticload.light.prepare import prepare
+from causticload.optics.finish import Finish, Lobe, Reflection
 from causticload.scene.model import Chart, Panels, Scene, Surface
+from causticload.sky.disc import SunDisc
 
 
 class UniformDisc:
-    """An evenly bright sun, written out here so that tests do not lean on the sky package."""
+    """An evenly bright sun, written out here; rough surfaces blur it as the sky package says."""
 
     def rings(self, radius_rad, *, slope_error_rad=0.0, count=None):
-        assert slope_error_rad == 0.0
+        if slope_error_rad > 0.0:
+            return SunDisc("uniform").rings(
+                radius_rad, slope_error_rad=slope_error_rad, count=count
+            )
         return np.array([radius_rad]), np.array([1.0])
 
     def sample(self, rng, n, radius_rad):
@@ -106,6 +106,7 @@ def lit_scene(
         panel[:k] = mirror_units
     if receiver_mirrors:
         panel[kind == 1] = panel.max() + 1
+    receives = {"receiver", "reflector"} if receiver_mirrors else {"receiver"}
     p = int(panel.max(initial=-1)) + 1
     first = np.array([np.flatnonzero(panel == q)[0] for q in range(p)], dtype=int)
     scene = Scene(
@@ -119,7 +120,7 @@ def lit_scene(
         curvature=np.zeros((len(kind), 3, 2)),
         surfaces=(
             Surface(name="mirror", file="", roles=frozenset({"reflector"})),
-            Surface(name="receiver", file="", roles=frozenset({"receiver"})),
+            Surface(name="receiver", file="", roles=frozenset(receives)),
             Surface(name="obstacle", file="", roles=frozenset({"obstruction"})),
         ),
         panels=Panels(
@@ -133,33 +134,25 @@ def lit_scene(
         ),
         charts=charts,
     )
-    F = make_facets(scene)
-    sheet_of = np.where(panel >= 0, 0, -1).astype(np.int32)
-    facet = scene.reflectors
-    table = np.ones((1, 2, 2, 361))
-    if R is not None:
-        table[0, :] = R if np.ndim(R) == 0 else np.asarray(R)[None]
-    n = sum(len(c.areas) for c in charts)
-    chart = charts[0] if charts else None
-    return LitScene(
-        scene=scene,
-        F=F,
-        grids=make_grids(charts),
-        meanings=make_meanings(scene),
-        tracer=build_tracer(triangles, engine=engine),
-        base=cut_to_length(F, whole_facets(F, facet, sheet_of[facet]), longest_m=4.0),
-        disc=UniformDisc(),
-        R=table,
-        slope_error=np.zeros(1),
-        scatter=np.zeros(1),
-        first_sheet=np.ones(1),
-        sheet_of=sheet_of,
-        points=chart.points if charts else np.zeros((0, 3)),
-        point_normals=np.tile(chart.normal, (n, 1)) if charts else np.zeros((0, 3)),
-        point_areas=chart.areas if charts else np.zeros(0),
-        point_surface=np.ones(n, np.int32),
-        mirror_point=np.full(n, receiver_mirrors),
-        clearance_m=1e-3,
+    return prepare(scene, finishes=[table_finish(R)] * 3, disc=UniformDisc(), engine=engine)
+
+
+def table_finish(R=None):
+    """A finish of one sheet; ``R`` a number, an (s, p) table (2, angles) or None for 1."""
+    table = np.broadcast_to(1.0 if R is None else np.asarray(R, float), (2, 361))
+    angle = np.radians(np.linspace(0.0, 90.0, 361))
+
+    def law(theta):
+        both = np.stack([np.interp(theta, angle, row) for row in table])
+        return np.broadcast_to(both, (1, 2, *both.shape)).copy()
+
+    return Finish(
+        name="table",
+        lobes=(Lobe(name="sheet"),),
+        reflection=Reflection(law),
+        angular="table",
+        source="test",
+        solar_range=(0.0, 1.0),
     )
 
 

@@ -43,6 +43,24 @@ def test_agrees_with_the_exact_overlap_of_each_disc(a, b, c, slope):
     assert inside(T, blur) == pytest.approx(exact, abs=TABLE_ERROR)
 
 
+@settings(max_examples=200, deadline=None)
+@given(
+    st.floats(-3.0, 3.0).map(lambda x: round(x, 3)),
+    st.floats(0.0, 1.0),
+    st.floats(1.0, 300.0),
+    st.floats(0.0, 6.3),
+)
+def test_long_thin_triangles(height, place, length, turn):
+    # A sliver that just passes for an image: its point, and its middle, past and over the disc.
+    width = 0.2 / length
+    T = np.array([[0.0, -width], [length, 0.0], [0.0, width]]) - [place * length, height * width]
+    T = T @ np.array([[math.cos(turn), -math.sin(turn)], [math.sin(turn), math.cos(turn)]]).T
+    blur = blur_of()
+    path, area = 1.0 / blur.reach[0], width * length
+    exact = area * flux_density(*T.ravel(), path, blur.radii[0], blur.weights[0])
+    assert inside(T, blur) == pytest.approx(exact, abs=TABLE_ERROR)
+
+
 @settings(max_examples=60, deadline=None)
 @given(corner, st.floats(0.0, 6.3))
 def test_a_fan_of_triangles_holds_the_whole_disc_once(apex, turn):

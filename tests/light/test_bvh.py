@@ -134,3 +134,51 @@ def test_bad_triangles(bad):
 def test_unknown_engine():
     with pytest.raises(InputError, match="engine"):
         build_tracer(soup(1), engine="warp")
+
+
+def test_own_hierarchy_leaves_no_cracks_for_rays_from_afar():
+    # A floor of squares near the origin; each ray is aimed within 10 µm of an edge that two
+    # squares share, from 500 m away, where single precision has steps of 30 µm.
+    i, j = (x.ravel()[:, None] for x in np.indices((40, 40)))
+    a = np.concatenate([0.7 * (i - 20), 0.7 * (j - 20), 0.0 * i], axis=1)
+    x, y = np.array([0.7, 0.0, 0.0]), np.array([0.0, 0.7, 0.0])
+    T = np.concatenate([np.stack([a, a + x, a + x + y], 1), np.stack([a, a + x + y, a + y], 1)])
+    rng = np.random.default_rng(8)
+    n = 20_000
+    target = 0.7 * rng.integers(-19, 19, (n, 3)) * [1.0, 1.0, 0.0]
+    target += rng.uniform(-1e-5, 1e-5, (n, 3)) * [1, 1, 0]
+    target[: n // 2, 0] += rng.uniform(0.0, 0.7, n // 2)
+    o = rng.uniform([300, -400, 10], [400, -300, 80], (n, 3))
+    d = target - o
+    far = np.linalg.norm(d, axis=1)
+    triangle, distance = build_tracer(T, engine="own").first_hit(o, d / far[:, None])
+    assert (triangle >= 0).all()
+    assert distance == pytest.approx(far, abs=1e-9)
+
+
+def test_own_hierarchy_holds_triangles_that_no_split_parts():
+    # A thousand copies of one triangle: their middles are the same.
+    T = np.tile(np.array([[[0, 0, 0], [1, 0, 0], [0, 1, 0]]], float), (1000, 1, 1))
+    T[500:, :, 2] += 1e-4 * np.arange(500)[:, None]
+    tracer = build_tracer(T, engine="own")
+    o, d = np.array([[0.2, 0.2, 5.0]]), np.array([[0.0, 0.0, -1.0]])
+    triangle, distance = tracer.first_hit(o, d)
+    assert triangle[0] == 999
+    assert distance[0] == pytest.approx(5.0 - 0.0499, abs=1e-12)
+    assert tracer.occluded(o, d, limit=np.array([4.9502]))[0]
+    assert not tracer.occluded(o, d, limit=np.array([4.9500]))[0]
+
+
+def test_own_hierarchy_takes_rays_in_any_order():
+    # Many rays are sorted before they are sent, some from far outside, some not numbers at all.
+    tracer = build_tracer(soup(500), engine="own")
+    o, d = rays(9000)
+    o[::7] *= 40.0
+    d[5::70] = np.nan
+    triangle, distance = tracer.first_hit(o, d)
+    few = [tracer.first_hit(o[k : k + 1000], d[k : k + 1000]) for k in range(0, 9000, 1000)]
+    assert (triangle == np.concatenate([f[0] for f in few])).all()
+    assert (distance == np.concatenate([f[1] for f in few])).all()
+    assert (triangle[5::70] == -1).all()
+    assert 0.03 < (triangle >= 0).mean() < 0.9
+    assert (tracer.occluded(o, d) == (triangle >= 0)).all()

@@ -16,6 +16,7 @@ import numpy as np
 
 from causticload.hazard.findings import Episode, Season
 from causticload.hazard.seasons import severity, union_minutes
+from causticload.output.records import to_record
 from causticload.output.results import Year
 
 Span = tuple[date, date]
@@ -117,10 +118,8 @@ def extras_of(year: Year, finding: Finding) -> dict[str, Any]:
     extras : dict
         Empty if the run worked nothing out.
     """
-    for season in year.seasons:
-        if season.number == finding.main.season:
-            return dict(getattr(season, "finding", None) or {})
-    return {}
+    found = year.findings.get(finding.main.season)
+    return to_record(found) if found else {}
 
 
 def gather(year: Year) -> list[Finding]:

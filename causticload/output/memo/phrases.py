@@ -348,7 +348,15 @@ EYES_WORST = (
     "{limit:,.0f} W/m² for an after-image."
 )
 EYES_NOTHING = "{name}: no after-image found under these assumptions."
-EYES_SOURCE = "{criterion}: {source}"
+EYES_SOURCES = (
+    "After-image and burn: Ho, Ghanbari and Diver, J. Solar Energy Eng. 133 (2011) 031021, for one "
+    "look of about 0.15 s with a pupil of 2 mm; from memory, high confidence. Check it there.",
+    "Veil: the general equation of CIE 146:2002 with age (read), at 100 lm/W. Contrast "
+    "is told against a sunlit street of 5,000 cd/m² (common practice).",
+    "500 cd/m²: 10 E/theta² at a driver's eye, Hassall (1991); from memory, medium confidence.",
+    "First reflections only, within 100° of the line of sight; areas closer than half a sun count "
+    "as one.",
+)
 
 # --- none over ----------------------------------------------------------------------------------
 NONE_OVER_TEXT = (

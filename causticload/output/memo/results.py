@@ -3,12 +3,13 @@
 from __future__ import annotations
 
 from collections.abc import Iterator, Sequence
-from datetime import date
 from typing import Any
 
 import numpy as np
 
-from causticload.hazard.findings import Episode
+from causticload.hazard.cautions import EYES
+from causticload.hazard.eyes import EYE_CLASS_WORDS, EyeClass
+from causticload.hazard.findings import Episode, ObserverFinding
 from causticload.output import words
 from causticload.output.memo import phrases
 from causticload.output.memo.blocks import (
@@ -373,17 +374,11 @@ def _contributor_table(f: Finding) -> Table:
 
 
 def _temperature(evidence: Evidence, f: Finding) -> Iterator[Block]:
-    row = extras_of(evidence.year, f).get("history")
-    path = evidence.folder / "histories.npz"
-    if row is None or not path.is_file():
+    history = evidence.year.histories.get(f.main.season)
+    if history is None:
         return
-    with np.load(path) as file:
-        part = slice(int(file["start"][row]), int(file["start"][row + 1]))
-        time = file["time"][part]
-        lines = {
-            phrases.WITH_FACADE: file["surface_C"][part],
-            phrases.WITHOUT_FACADE: file["surface_without_C"][part],
-        }
+    time = history.loads.time
+    lines = {phrases.WITH_FACADE: history.surface_c, phrases.WITHOUT_FACADE: history.without_c}
     yield Picture(
         f"fig-temperature-{f.number}",
         phrases.TEMPERATURE_FIGURE.format(receiver=f.receiver),
@@ -406,7 +401,7 @@ def observers(evidence: Evidence) -> Iterator[Block]:
         A section.
     """
     yield Heading(1, phrases.OBSERVERS, "sec-eyes")
-    rows = evidence.summary.get("observers")
+    rows = evidence.year.observers
     named = evidence.year.study.observers
     if not rows:
         yield Text(
@@ -423,46 +418,39 @@ def observers(evidence: Evidence) -> Iterator[Block]:
         tuple(_observer_row(o) for o in rows),
     )
     yield Bullets(tuple(_observer_worst(o, evidence.zone) for o in rows))
-    for text in dict.fromkeys(o["caution"] for o in rows if o.get("caution")):
-        yield Note(text)
-    cited = {k: v for o in rows for k, v in (o.get("sources") or {}).items()}
-    if cited:
-        yield Bullets(
-            tuple(phrases.EYES_SOURCE.format(criterion=k, source=v) for k, v in cited.items())
-        )
+    yield Note(" ".join(EYES))
+    yield Bullets(phrases.EYES_SOURCES)
 
 
-def _observer_row(o: dict[str, Any]) -> tuple[str, ...]:
-    spans = [(date.fromisoformat(a), date.fromisoformat(b)) for a, b in o.get("spans") or ()]
-    clock = o.get("clock")
+def _observer_row(o: ObserverFinding) -> tuple[str, ...]:
     return (
-        o["name"],
-        f"{o['after_image_days']:.0f}",
-        span_text(spans),
-        clock_text((clock[0], clock[1])) if clock else "",
-        f"{o['after_image_minutes_year']:.0f}; {o['after_image_most_minutes_day']:.0f}",
-        f"{o['rogue_minutes_year']:.0f}",
-        f"{o['retinal_burn_minutes_year']:.0f}",
+        o.name,
+        f"{o.after_image_days:.0f}",
+        span_text(list(o.spans)),
+        clock_text(o.clock) if o.clock else "",
+        f"{o.after_image_minutes:.0f}; {o.after_image_most:.0f}",
+        f"{o.rogue_minutes:.0f}",
+        f"{o.burn_minutes:.0f}",
     )
 
 
-def _observer_worst(o: dict[str, Any], zone: str) -> str:
-    w = o.get("worst")
-    if not w:
-        return phrases.EYES_NOTHING.format(name=o["name"])
-    x, y, z = w["place_m"]
+def _observer_worst(o: ObserverFinding, zone: str) -> str:
+    w = o.worst
+    if w is None:
+        return phrases.EYES_NOTHING.format(name=o.name)
+    said = EYE_CLASS_WORDS[EyeClass(w.eye_class)]
     return phrases.EYES_WORST.format(
-        name=o["name"],
-        when=_utc(w["time"], zone),
-        place=phrases.place((x, y, z)),
-        images=w["images"],
-        off=w["angle_from_sight_deg"],
-        cls=w["class"][:1].upper() + w["class"][1:],
-        lux=w["illuminance_lx"],
-        veil=w["veil_cd_m2"],
-        contrast=100.0 * w["contrast_left"],
-        retinal=w["retinal_W_m2"],
-        limit=w["after_image_limit_W_m2"],
+        name=o.name,
+        when=when(w.time, zone),
+        place=phrases.place(w.place),
+        images=w.images,
+        off=w.angle_deg,
+        cls=said[:1].upper() + said[1:],
+        lux=w.illuminance,
+        veil=w.veil,
+        contrast=100.0 * w.contrast_left,
+        retinal=w.retinal,
+        limit=w.after_image_limit,
     )
 
 
