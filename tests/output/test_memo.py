@@ -5,7 +5,8 @@ import re
 import shutil
 import sys
 import zipfile
-from dataclasses import dataclass, replace
+from copy import copy
+from dataclasses import replace
 from datetime import date, timedelta
 from pathlib import Path
 
@@ -16,7 +17,7 @@ from pypdf import PdfReader
 
 from causticload.cli import DONE, WRONG_INPUT, main
 from causticload.errors import InputError, ResultError
-from causticload.hazard.findings import Season
+from causticload.hazard.findings import ObserverFinding, Sight
 from causticload.hazard.seasons import worth_a_close_look
 from causticload.output import words
 from causticload.output.memo import phrases, write_memo
@@ -151,7 +152,6 @@ def test_the_same_findings_stand_in_all_three(memo_files, docx_text, pdf_text):
     for text in (docx_text, pdf_text, page):
         assert "Local codes and licensed practice decide" in text
         assert phrases.TO_FILL in text
-        assert "Not assessed" in text or "not assessed in this run" in text
 
 
 def test_user_texts_are_not_taken_for_markup(memo_files, docx_text, pdf_text):
@@ -178,8 +178,7 @@ def test_inputs_and_settings_are_in_the_appendix(summary, docx_text, pdf_text):
 
 
 def test_a_year_without_exceedance_says_so(evidence):
-    quiet = Evidence(evidence.folder)
-    quiet.year = replace(evidence.year, episodes=[], seasons=[])
+    quiet = with_year(evidence, episodes=[], seasons=[])
     memo = compose(quiet, now=NOW)
     text = "\n".join(all_text([*memo.summary, *memo.blocks]))
     assert words.NO_EXCEEDANCE in text
@@ -188,96 +187,101 @@ def test_a_year_without_exceedance_says_so(evidence):
     assert len(none.rows) == sum(len(c["receivers"]) for c in evidence.summary["criteria"])
 
 
-OBSERVER = {
-    "name": "gate",
-    "points": 3,
-    "look": "along",
-    "age": 50.0,
-    "after_image_days": 41.0,
-    "after_image_minutes_year": 615.0,
-    "after_image_most_minutes_day": 25.0,
-    "worst_day": "2025-03-21",
-    "retinal_burn_minutes_year": 0.0,
-    "rogue_minutes_year": 333.0,
-    "clock": ["09:10", "10:05"],
-    "spans": [["2025-03-01", "2025-04-10"]],
-    "daily": [],
-    "worst": {
-        "time": "2025-03-21T09:30:00Z",
-        "place_m": [1.0, -12.0, 1.6],
-        "images": 2,
-        "subtense_mrad": 9.0,
-        "corneal_W_m2": 300.0,
-        "retinal_W_m2": 12345.0,
-        "after_image_limit_W_m2": 777.0,
-        "burn_limit_W_m2": 99999.0,
-        "class": "after-image",
-        "illuminance_lx": 23456.0,
-        "veil_cd_m2": 432.0,
-        "contrast_left": 0.37,
-        "angle_from_sight_deg": 12.0,
-        "source_azimuth_deg": 10.0,
-        "source_elevation_deg": 5.0,
-    },
-    "sources": {"after-image": "Some source 2010"},
-    "caution": "Never look into a reflection of the sun.",
-}
+SIGHT = Sight(
+    time=np.datetime64("2025-03-21T09:30:00"),
+    place=(1.0, -12.0, 1.6),
+    images=2,
+    subtense_mrad=9.0,
+    corneal=300.0,
+    retinal=12345.0,
+    after_image_limit=777.0,
+    burn_limit=99999.0,
+    eye_class=1,
+    illuminance=23456.0,
+    veil=432.0,
+    rogue_veil=500.0,
+    contrast_left=0.37,
+    angle_deg=12.0,
+    azimuth_deg=10.0,
+    elevation_deg=5.0,
+)
+OBSERVER = ObserverFinding(
+    name="gate",
+    points=3,
+    age=50.0,
+    after_image_days=41.0,
+    after_image_minutes=615.0,
+    after_image_most=25.0,
+    worst_day=date(2025, 3, 21),
+    burn_minutes=0.0,
+    rogue_minutes=333.0,
+    spans=((date(2025, 3, 1), date(2025, 4, 10)),),
+    clock=("09:10", "10:05"),
+    daily=(),
+    worst=SIGHT,
+)
+
+
+def with_year(evidence, **parts):
+    """The same evidence with parts of its year replaced."""
+    other = copy(evidence)
+    other.year = replace(evidence.year, **parts)
+    return other
 
 
 def test_observers_are_told_when_the_run_has_them(evidence):
-    without = "\n".join(all_text(observers(evidence)))
+    without = "\n".join(all_text(observers(with_year(evidence, observers=[]))))
     assert "gate" in without
     assert "not assessed in this run" in without
-    seen = Evidence(evidence.folder)
-    seen.summary = {**evidence.summary, "observers": [OBSERVER, {**OBSERVER, "worst": None}]}
-    text = "\n".join(all_text(observers(seen)))
+    rows = [OBSERVER, replace(OBSERVER, worst=None)]
+    text = "\n".join(all_text(observers(with_year(evidence, observers=rows))))
     for part in ("41", "615; 25", "333", "1 March to 10 April", "09:10 to 10:05", "12,345", "777"):
         assert part in text
     assert "21 March 2025, 09:30 (UTC+00:00)" in text
     assert "37 % of contrast" in text
-    assert "Some source 2010" in text
     assert "no after-image found under these assumptions" in text
 
 
-@dataclass(frozen=True, kw_only=True)
-class SeasonWithFinding(Season):
-    """A season as a run with hazards worked out keeps it."""
+def test_the_years_own_observer_is_told(evidence, summary, docx_text):
+    (gate,) = summary["observers"]
+    row = f"{gate['after_image_minutes']:.0f}; {gate['after_image_most']:.0f}"
+    assert row in docx_text
+    if gate["worst"]:
+        assert f"{gate['worst']['illuminance']:,.0f} lx" in docx_text
 
-    finding: dict | None = None
+
+def test_what_a_season_worked_out_is_told(evidence, summary, docx_text):
+    flat = " ".join(docx_text.split())
+    told = 0
+    for f in gather(evidence.year):
+        own = next((r for r in summary["findings"] if r["season"] == f.main.season), None)
+        if own is None:
+            continue
+        told += 1
+        for part in ("least_panels", "skin", "surface"):
+            if own[part]:
+                assert " ".join(own[part]["text"].split()) in flat
+        for reason in own["confidence"]["reasons"]:
+            assert " ".join(reason.split()) in flat
+    assert told >= 1
+    bare = with_year(evidence, findings={}, histories={})
+    text = "\n".join(all_text(compose(bare, now=NOW).blocks))
+    assert phrases.WHY_COUNTED in text
 
 
-def test_what_a_season_worked_out_is_told(evidence, tmp_path):
-    extra = {
-        "confidence": {"grade": "fair", "reasons": ["Because of this."]},
-        "least_panels": {"text": "Two panels hold the rest up."},
-        "skin": {"text": "Pain comes after 9 s."},
-        "surface": {"text": "The paint reaches 81 °C."},
-        "history": 0,
-    }
-    rich = Evidence(evidence.folder)
-    rich.folder = tmp_path
-    (tmp_path / "study.toml").write_text((evidence.folder / "study.toml").read_text())
-    (tmp_path / "summary.json").write_text("{}")
-    n = 5
-    np.savez(
-        tmp_path / "histories.npz",
-        start=[0, n],
-        time=np.datetime64("2025-06-21T10:00:00") + 60 * np.arange(n),
-        surface_C=np.linspace(20, 80, n),
-        surface_without_C=np.linspace(20, 40, n),
+def test_a_temperature_history_is_drawn(evidence):
+    memo = compose(evidence, now=NOW)
+    charts = [b for b in memo.blocks if getattr(b, "key", "").startswith("fig-temperature")]
+    assert len(charts) == sum(
+        f.main.season in evidence.year.histories for f in gather(evidence.year)
     )
-    rich.year = replace(
-        evidence.year,
-        seasons=[SeasonWithFinding(**vars(s), finding=extra) for s in evidence.year.seasons],
-    )
-    memo = compose(rich, now=NOW)
-    text = "\n".join(all_text([*memo.summary, *memo.blocks]))
-    for part in ("Because of this.", "Two panels hold", "Pain comes after 9 s", "reaches 81 °C"):
-        assert part in text
-    chart = next(b for b in memo.blocks if getattr(b, "key", "").startswith("fig-temperature"))
-    axes = chart.draw().axes[0]
-    assert axes.get_ylabel() == "surface temperature (°C)"
-    assert axes.lines[0].get_ydata()[-1] == 80.0
+    for chart in charts:
+        number_of = int(chart.key.rsplit("-", 1)[1])
+        finding = gather(evidence.year)[number_of - 1]
+        history = evidence.year.histories[finding.main.season]
+        axes = chart.draw().axes[0]
+        assert axes.get_ylabel() == "surface temperature (°C)"
+        assert axes.lines[0].get_ydata() == pytest.approx(history.surface_c)
 
 
 # --- what it is made of ---------------------------------------------------------------------------
@@ -373,8 +377,8 @@ def test_written_again_the_bytes_are_the_same(memo_files):
 
 
 def test_another_hour_changes_the_time_stamp_only(memo_files, tmp_path):
-    copy = shutil.copytree(memo_files.folder, tmp_path / memo_files.folder.name)
-    (later,) = write_memo(copy, formats=["html"], now=NOW + timedelta(hours=1))
+    twin = shutil.copytree(memo_files.folder, tmp_path / memo_files.folder.name)
+    (later,) = write_memo(twin, formats=["html"], now=NOW + timedelta(hours=1))
     a, b = memo_files.html.read_text().splitlines(), later.read_text().splitlines()
     assert len(a) == len(b)
     differ = [(x, y) for x, y in zip(a, b, strict=True) if x != y]
@@ -447,22 +451,24 @@ def test_each_place_and_harm_gets_a_close_look_first(evidence):
 # --- refusals and the command ---------------------------------------------------------------------
 
 
-@pytest.mark.parametrize("name", ["summary.json", "panels.npz", "model.glb", "chart.npz"])
+@pytest.mark.parametrize(
+    "name", ["summary.json", "panels.npz", "model.glb", "chart.npz", "histories.npz"]
+)
 def test_partial_folders_are_refused(memo_files, tmp_path, name):
-    copy = shutil.copytree(memo_files.folder, tmp_path / "copy")
-    (copy / "memo.pdf").unlink()
-    (copy / name).unlink()
+    twin = shutil.copytree(memo_files.folder, tmp_path / "copy")
+    (twin / "memo.pdf").unlink()
+    (twin / name).unlink()
     with pytest.raises(ResultError, match=re.escape(name)):
-        write_memo(copy)
-    assert not (copy / "memo.pdf").exists()
+        write_memo(twin)
+    assert not (twin / "memo.pdf").exists()
 
 
 @pytest.mark.parametrize("name", ["panels.npz", "model.glb", "receivers.vtp"])
 def test_broken_folders_are_refused(memo_files, tmp_path, name):
-    copy = shutil.copytree(memo_files.folder, tmp_path / "copy")
-    (copy / name).write_bytes(b"cut short")
+    twin = shutil.copytree(memo_files.folder, tmp_path / "copy")
+    (twin / name).write_bytes(b"cut short")
     with pytest.raises(ResultError):
-        write_memo(copy)
+        write_memo(twin)
 
 
 def test_formats_are_checked_before_anything_is_read(tmp_path, monkeypatch):
@@ -478,14 +484,14 @@ def test_formats_are_checked_before_anything_is_read(tmp_path, monkeypatch):
 
 
 def test_command_writes_what_is_asked(memo_files, tmp_path, capsys):
-    copy = shutil.copytree(memo_files.folder, tmp_path / "copy")
-    for path in copy.glob("memo.*"):
+    twin = shutil.copytree(memo_files.folder, tmp_path / "copy")
+    for path in twin.glob("memo.*"):
         path.unlink()
-    assert main(["memo", str(copy), "--format", "html", "--json"]) == DONE
-    assert json.loads(capsys.readouterr().out) == {"files": [str(copy / "memo.html")]}
-    assert [p.name for p in copy.glob("memo.*")] == ["memo.html"]
+    assert main(["memo", str(twin), "--format", "html", "--json"]) == DONE
+    assert json.loads(capsys.readouterr().out) == {"files": [str(twin / "memo.html")]}
+    assert [p.name for p in twin.glob("memo.*")] == ["memo.html"]
     assert main(["memo", str(tmp_path / "none")]) == WRONG_INPUT
     captured = capsys.readouterr()
     assert "no such folder" in captured.err
     assert captured.err.count("\n") == 1
-    assert main(["memo", str(copy), "--format", "rtf"]) == WRONG_INPUT
+    assert main(["memo", str(twin), "--format", "rtf"]) == WRONG_INPUT

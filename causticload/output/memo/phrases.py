@@ -255,6 +255,10 @@ PEAK_CHECKED = (
 )
 IMAGES = {1: "1 reflected image"}
 IMAGES_MANY = "{n} reflected images"
+PEAK_RANGE = (
+    "With the reflectances that the data of the finish leave open, the reflected part lies between "
+    "{low} and {high}."
+)
 PEAK_GRID = (
     "Strongest by the grid: {load} ({quantity}; {reflected} of it by reflection), mean over a "
     "cell, at {place} on {when}. This peak was not looked at closely and not counted; it can be "
