@@ -133,10 +133,15 @@ ROLES_COLUMNS = ("Surface", "Role", "Form or use", "Finish", "Triangles")
 PANELS_CAPTION = "Panels of the reflectors."
 PANELS_COLUMNS = ("Surface", "Panels", "Flat", "Area (m²)", "Width (m)", "Height (m)")
 MIDDLE_RANGE = "{low:.2f} to {high:.2f}"
-FOCAL_CAPTION = (
+FOCAL_STRAIGHT = (
     "Distance at which each place of the facade gathers light that falls straight on it: half its "
     "least concave radius of curvature. White: flat, convex or beyond {far:.0f} m. Slanting light "
     "gathers nearer in one direction and farther off in the other."
+)
+FOCAL_SLANTING = (
+    "Distance along the reflected ray at which each place of the facade gathers the light of the "
+    "sun of the worst peak ({sun}): the shorter of its two focal distances. White: none nearer "
+    "than {far:.0f} m, or turned away from that sun."
 )
 FOCAL_TEXT = (
     "Half of the gathering area has a focal distance between {low:.0f} m and {high:.0f} m "
