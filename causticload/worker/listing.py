@@ -3,7 +3,6 @@
 from __future__ import annotations
 
 import zipfile
-from importlib import import_module
 from pathlib import Path
 from typing import Any
 
@@ -178,7 +177,7 @@ def write_memo(folder: Path, formats: list[Any] | None) -> list[str]:
     folder : Path
         Result folder of a year.
     formats : list of str or None
-        Of docx, pdf, html; None for the default.
+        Of docx, pdf, html; None for all that can be written with what is installed.
 
     Returns
     -------
@@ -187,16 +186,10 @@ def write_memo(folder: Path, formats: list[Any] | None) -> list[str]:
 
     Raises
     ------
-    InputError
-        If this version cannot write memos.
+    CausticloadError
+        If the folder or a format is wrong.
     """
-    try:
-        write = import_module("causticload.output.memo").write_memo
-    except ImportError:
-        raise InputError(
-            "this version of the engine writes no memo",
-            where="memo",
-            hint="Install the newest causticload.",
-        ) from None
-    files = write(folder, formats=formats) if formats else write(folder)
-    return [str(f) for f in files]
+    from causticload.output.memo import available_formats
+    from causticload.output.memo import write_memo as write
+
+    return [str(p) for p in write(folder, formats=formats or available_formats())]

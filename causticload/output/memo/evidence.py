@@ -73,6 +73,7 @@ class Evidence:
         corners = np.asarray(facade.points, float)
         self.facade: Floats = corners[facade.faces.reshape(-1, 4)[:, 1:]]
         self.facade_data = {k: np.asarray(v) for k, v in facade.cell_data.items()}
+        self.facade_notes = {k: str(v[0]) for k, v in facade.field_data.items()}
         with np.load(self.folder / "panels.npz") as file:
             self.panels = Panels(
                 **{k: file[k] for k in ("surface", "area", "centroid", "normal", "flat", "size")}

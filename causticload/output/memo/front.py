@@ -29,6 +29,8 @@ from causticload.output.memo.figures.facade_maps import FAR, focal_distance, foc
 from causticload.output.memo.figures.plans import site_plan
 from causticload.output.memo.figures.views import LIT_W_M2, site_view
 
+SUN_NOTE = "sun of the focal distances"  # as the folder's facade calls it
+
 
 def columns(
     titles: tuple[str, ...], shares: tuple[float, ...], right: tuple[int, ...] = ()
@@ -173,9 +175,11 @@ def _focus(evidence: Evidence) -> Iterator[Block]:
         for q in (0.25, 0.75)
     )
     yield Text(phrases.FOCAL_TEXT.format(low=low, high=high, map=ref("fig-focal")))
+    sun = evidence.facade_notes.get(SUN_NOTE)
+    caption = phrases.FOCAL_SLANTING if sun else phrases.FOCAL_STRAIGHT
     yield Picture(
         "fig-focal",
-        phrases.FOCAL_CAPTION.format(far=FAR),
+        caption.format(far=FAR, sun=sun),
         phrases.GEOMETRY,
         lambda: focal_map(evidence),
     )

@@ -133,10 +133,15 @@ ROLES_COLUMNS = ("Surface", "Role", "Form or use", "Finish", "Triangles")
 PANELS_CAPTION = "Panels of the reflectors."
 PANELS_COLUMNS = ("Surface", "Panels", "Flat", "Area (m²)", "Width (m)", "Height (m)")
 MIDDLE_RANGE = "{low:.2f} to {high:.2f}"
-FOCAL_CAPTION = (
+FOCAL_STRAIGHT = (
     "Distance at which each place of the facade gathers light that falls straight on it: half its "
     "least concave radius of curvature. White: flat, convex or beyond {far:.0f} m. Slanting light "
     "gathers nearer in one direction and farther off in the other."
+)
+FOCAL_SLANTING = (
+    "Distance along the reflected ray at which each place of the facade gathers the light of the "
+    "sun of the worst peak ({sun}): the shorter of its two focal distances. White: none nearer "
+    "than {far:.0f} m, or turned away from that sun."
 )
 FOCAL_TEXT = (
     "Half of the gathering area has a focal distance between {low:.0f} m and {high:.0f} m "
@@ -215,7 +220,7 @@ CHECK_MESH_NONE = "Shape. No smooth surface needed its tessellation checked."
 LOAD_PLAN = (
     "Peak reflected load of the year on surfaces that lie; where one lies above another, the "
     "larger load is shown. Colours are even in the square root of the load. Lines: reflected load "
-    "alone equals a limit (median of 3 by 3 cells)."
+    "alone equals a limit (median over about a metre)."
 )
 HOURS_PLAN = 'Hours of the year over the limit "{criterion}" ({limit}); white: never.'
 IMAGE_PLAN = (
@@ -255,6 +260,10 @@ PEAK_CHECKED = (
 )
 IMAGES = {1: "1 reflected image"}
 IMAGES_MANY = "{n} reflected images"
+PEAK_RANGE = (
+    "With the reflectances that the data of the finish leave open, the reflected part lies between "
+    "{low} and {high}."
+)
 PEAK_GRID = (
     "Strongest by the grid: {load} ({quantity}; {reflected} of it by reflection), mean over a "
     "cell, at {place} on {when}. This peak was not looked at closely and not counted; it can be "

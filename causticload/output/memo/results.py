@@ -293,6 +293,9 @@ def _facts(evidence: Evidence, f: Finding) -> Iterator[str]:
             are="is" if n == 1 else "are",
             width=e.check.width,
         )
+        low, high = e.check.reflected_low, e.check.reflected_high
+        if low is not None and high is not None and high > low:
+            yield phrases.PEAK_RANGE.format(low=words.load(low), high=words.load(high))
         if e.check.agrees:
             yield _count_text(e)
     yield from _grid_doubts(evidence, f, peak)

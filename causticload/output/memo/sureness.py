@@ -75,8 +75,9 @@ def sureness(evidence: Evidence, finding: Finding) -> tuple[str, tuple[str, ...]
     """
     given = extras_of(evidence.year, finding).get("confidence")
     if given:
-        doubt = (phrases.WHY_GRID,) if grid_is_doubtful(finding) else ()
-        return given["grade"], (*given["reasons"], *doubt)
+        if grid_is_doubtful(finding):
+            return phrases.WEAK, (phrases.WHY_GRID, *given["reasons"])
+        return given["grade"], tuple(given["reasons"])
     check = finding.main.check
     names = open_finishes(evidence)
     recalled = [f.criterion for f in finding.limits if "memory" in f.criterion["confidence"]]

@@ -189,7 +189,10 @@ def contribution_map(evidence: Evidence) -> Figure:
 
 
 def focal_distance(evidence: Evidence) -> Floats:
-    """Distance at which each triangle gathers light that falls straight on it.
+    """Distance at which each triangle gathers light.
+
+    It is that under the sun of the worst peak where the folder tells it, else that of light which
+    falls straight on the facade.
 
     Parameters
     ----------
@@ -199,7 +202,7 @@ def focal_distance(evidence: Evidence) -> Floats:
     Returns
     -------
     distance : (k,) float
-        The shorter of the two principal ones; nan where it gathers in neither way. [m]
+        The shorter of the two focal distances; nan where it gathers in neither way. [m]
     """
     data = evidence.facade_data
     given = [data[n] for n in ("focal tangential [m]", "focal sagittal [m]") if n in data]

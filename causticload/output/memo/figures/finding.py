@@ -30,7 +30,7 @@ def finding_figure(evidence: Evidence, finding: Finding) -> Figure:
     figure : Figure
         Parts a to d.
     """
-    figure = paper_figure(WIDTH_MM, 106.0)
+    figure = paper_figure(WIDTH_MM, 98.0)
     (where, behind), (when, day) = figure.subplots(2, 2)
     episode = finding.main
     place = np.array(peak_of(episode).place)

@@ -28,6 +28,7 @@ from causticload.output.results import ReceiverYear
 from causticload.scene.model import Floats
 
 LIES = 0.9  # least upward part of a normal for a receiver to be shown in plan
+SMOOTH_M = 1.0  # lines of limits go by the median over so much
 MOST_LINES = 4  # limits that are drawn as lines, the lowest first
 LIT = 0.02  # share of the largest load from which a place counts as lit, to frame plans
 
@@ -253,7 +254,7 @@ def load_plan(evidence: Evidence) -> Figure:
 def contour(axes: Any, shown: Raster, levels: Sequence[float]) -> None:
     """Draw lines where a raster crosses values, white under black, each of its own dashes.
 
-    Single bright cells are left out: the lines go by the median of 3 by 3 cells.
+    Single bright cells are left out: the lines go by the median over about a metre.
 
     Parameters
     ----------
@@ -271,7 +272,8 @@ def contour(axes: Any, shown: Raster, levels: Sequence[float]) -> None:
     x = left + (np.arange(columns) + 0.5) * (right - left) / columns
     y = bottom + (np.arange(rows) + 0.5) * (top - bottom) / rows
     dashes = ("solid", "dashed", "dotted", "dashdot")
-    values = ndimage.median_filter(np.nan_to_num(shown.image), size=3, mode="nearest")
+    cells = int(np.clip(round(SMOOTH_M * columns / (right - left)), 3, 9)) // 2 * 2 + 1
+    values = ndimage.median_filter(np.nan_to_num(shown.image), size=cells, mode="nearest")
     handles = []
     for k, level in enumerate(levels):
         style = dashes[k % len(dashes)]
