@@ -36,6 +36,7 @@ from causticload.output.memo.compose import compose
 from causticload.output.memo.evidence import Evidence
 from causticload.output.memo.findings import gather, join_spans, need_of, peak_of
 from causticload.output.memo.results import observers
+from causticload.worker.listing import write_memo as write_memo_for_host
 
 sys.path.insert(0, str(Path(__file__).parent))
 from conftest import NOW
@@ -495,3 +496,11 @@ def test_command_writes_what_is_asked(memo_files, tmp_path, capsys):
     assert "no such folder" in captured.err
     assert captured.err.count("\n") == 1
     assert main(["memo", str(twin), "--format", "rtf"]) == WRONG_INPUT
+
+
+def test_a_host_gets_what_can_be_written(memo_files, tmp_path, monkeypatch):
+    twin = shutil.copytree(memo_files.folder, tmp_path / "copy")
+    monkeypatch.setattr(memo_write, "find_spec", lambda name: None)
+    assert write_memo_for_host(twin, None) == [str(twin / "memo.html")]
+    with pytest.raises(InputError, match="memo extra"):
+        write_memo_for_host(twin, ["docx"])

@@ -350,7 +350,7 @@ def draw_day(axes: Any, evidence: Evidence, receiver: str, episode: Episode) -> 
     axes.set_ylabel("load (W/m²)")
     axes.set_ylim(bottom=0.0)
     axes.xaxis.set_major_locator(mpl.ticker.MaxNLocator(integer=True))
-    axes.legend(fontsize=6.0, loc="upper left", framealpha=0.85)
+    axes.legend(fontsize=6.0, loc="best", framealpha=0.85)
     low, high = axes.get_ylim()
     axes.set_ylim(low, 1.35 * high)
 
