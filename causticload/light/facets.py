@@ -192,7 +192,9 @@ def _lean(F, t, k, u, v, w, out):
         out[i] /= length
 
 
-@njit(cache=True, nogil=True, error_model="numpy")
+# Inlined, since a call that is not hands on every array of ``F``, which costs more than the sums:
+# only panes that are not as the mesh has them pay for that.
+@njit(cache=True, nogil=True, error_model="numpy", inline="always")
 def normal_at(F, t, sheet, u, v, w, out):
     """Unit normal of a sheet of facet ``t`` at barycentric (u, v, w), into ``out`` (3,)."""
     for i in range(3):
