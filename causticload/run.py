@@ -23,7 +23,7 @@ from causticload.light.bvh import Engine
 from causticload.light.count import RayCount, count_spot
 from causticload.light.field import solve_field
 from causticload.light.focus import focus_share
-from causticload.light.points import load_limits
+from causticload.light.limits import load_limits
 from causticload.light.prepare import LitScene, prepare
 from causticload.light.tally import Accumulator, direct_factor, merge_loads
 from causticload.light.year import DayResult, run_day, run_days

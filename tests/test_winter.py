@@ -5,10 +5,14 @@ from pathlib import Path
 
 import numpy as np
 import pytest
+import pyvista as pv
 
 import causticload as cl
 from causticload.light.count import count_spot
 from causticload.light.points import solve_points
+from causticload.output.instant import instant_record
+from causticload.output.text import summarise_inspect, summarise_instant
+from causticload.run import inspect, save_focus
 from causticload.scene.figure_slopes import curvature_at_top
 from causticload.study.model import FigureSpec
 
@@ -116,3 +120,26 @@ def test_hottest_spot_agrees_with_random_rays(winter):
     assert abs(light.load.mean() - count.mean) < 3.5 * count.standard_error + 0.01 * count.mean
     low, high = receiver.peak_limits
     assert low < receiver.reflected[top] < high  # two figures do not settle slanting angles
+    record = next(r for r in instant_record(instant)["receivers"] if r["name"] == name)
+    assert record["peak_reflected_low_W_m2"] == pytest.approx(low)
+    assert record["peak_reflected_high_W_m2"] == pytest.approx(high)
+    assert "leave open of reflectance" in summarise_instant(instant)
+
+
+def test_focal_lengths_are_reported_and_written(winter, tmp_path):
+    report = inspect(winter, sun=SUN)
+    outer, inner = report["figures"]
+    # The middle of a 1.5 m by 2 m pane: f = 1 / (2 k), k a^2 / w_c = 9.35 and 4.8 at b/a = 1.33.
+    assert outer["short_focal_m"][1] == pytest.approx(1.5**2 / (2 * 9.35 * 3.01e-3), rel=0.02)
+    assert inner["short_focal_m"][1] == pytest.approx(-outer["short_focal_m"][1])
+    assert 0.0 < report["focus"]["share"] < 1.0
+    assert "focal length" in summarise_inspect(report)
+    save_focus(winter, tmp_path / "facade.vtp", sun=SUN)
+    grid = pv.read(tmp_path / "facade.vtp")
+    tangential, sagittal = (
+        np.asarray(grid.cell_data[f"focal {way} [m]"]) for way in ("tangential", "sagittal")
+    )
+    assert len(tangential) == len(winter.scene.reflectors)
+    assert (tangential[np.isfinite(tangential)] > 0.0).all()  # outer panes are hollow
+    # Slanting light brings the tangential focus nearer than the sagittal one of the same bend.
+    assert np.nanmedian(tangential) < np.nanmedian(sagittal)

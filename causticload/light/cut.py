@@ -14,6 +14,9 @@ LONGEST_EDGE_M = 4.0
 BOW_PART = 0.5
 # Between rays this share of a wavelength apart a wave cannot hide.
 WAVE_PART = 0.25
+# Strips this wide show a wave's ripple at 95 % of its depth; a grid's own measure of how straight a
+# tube's image is would let wider ones pass.
+STRIP_PART = 0.125
 # A line nearer to a corner than this share of the tube's size does not cut it.
 _TOUCH = 1e-6
 
@@ -58,12 +61,76 @@ def wave_spans(F: Facets, tubes: Tubes) -> Floats:
     row = figure_row(F, tubes)
     on = np.flatnonzero(row >= 0)
     on = on[F.wave[row[on]] != 0.0]
-    if len(on):
-        r = row[on]
-        k = np.einsum("na,nai->ni", F.wave_number[r], F.frame[r, 1:]) / (2.0 * np.pi)
-        corner = np.einsum("nij,njk->nik", tubes.bary[on], F.corner[tubes.facet[on]])
-        span[on] = np.abs(np.einsum("nei,ni->ne", np.roll(corner, -1, axis=1) - corner, k))
+    across = _across_wave(F, tubes.take(on))
+    span[on] = np.abs(np.roll(across, -1, axis=1) - across)
     return span
+
+
+def slice_waves(F: Facets, tubes: Tubes, *, part: float) -> Tubes:
+    """Cut tubes along the crests of their roller waves, as long strips.
+
+    Parameters
+    ----------
+    F : Facets
+        The scene's triangles.
+    tubes : Tubes
+        Any number of tubes.
+    part : float
+        Widest strip that may remain. [wavelengths]
+
+    Returns
+    -------
+    tubes : Tubes
+        As many as it takes, in no particular order.
+    """
+    wide = wave_spans(F, tubes).max(axis=1) > part * (1.0 + 1e-9)
+    if not wide.any():
+        return tubes
+    cut = tubes.take(wide)
+    across = _across_wave(F, cut)
+    n = np.arange(len(across))
+    low, middle, high = np.argsort(across, axis=1).T
+    span = across[n, high] - across[n, low]
+    # The crest through the middle corner parts the triangle in two, each with a side along a crest.
+    share = ((across[n, middle] - across[n, low]) / span)[:, None]
+    opposite = cut.bary[n, low] + share * (cut.bary[n, high] - cut.bary[n, low])
+    done = [tubes.take(~wide)]
+    for tip, size in ((low, share[:, 0] * span), (high, (1.0 - share[:, 0]) * span)):
+        done += _strips(F, cut, cut.bary[n, tip], cut.bary[n, middle], opposite, size / part)
+    return _join(done)
+
+
+def _strips(
+    F: Facets, tubes: Tubes, tip: Floats, left: Floats, right: Floats, widths: Floats
+) -> list[Tubes]:
+    """Triangles cut parallel to the side from ``left`` to ``right``, into strips of two triangles.
+
+    ``widths`` (n,) is how many strips a triangle is high; all corners are barycentric, (n, 3).
+    """
+    count = np.ceil(widths - 1e-6).astype(np.int64)
+    owner = np.repeat(np.arange(len(count)), count)
+    place = np.arange(len(owner)) - np.repeat(np.cumsum(count) - count, count)
+    near, far = place / count[owner], (place + 1) / count[owner]
+    a, b = tip[owner], left[owner] - tip[owner]
+    c = right[owner] - tip[owner]
+    corners = [a + near[:, None] * b, a + far[:, None] * b, a + far[:, None] * c]
+    last = a + near[:, None] * c
+    source = tubes.take(owner)
+    pieces = []
+    for three in (corners, [corners[0], corners[2], last]):
+        bary = np.stack(three, axis=1)
+        size = np.abs(np.linalg.det(bary))
+        area = F.area[source.facet] * size
+        pieces.append(Tubes(source.facet, source.sheet, bary, area).take(size > _TOUCH**2))
+    return pieces
+
+
+def _across_wave(F: Facets, tubes: Tubes) -> Floats:
+    """Where the corners of tubes on roller waves lie across them, (n, 3). [wavelengths]"""
+    row = figure_row(F, tubes)
+    k = np.einsum("na,nai->ni", F.wave_number[row], F.frame[row, 1:]) / (2.0 * np.pi)
+    corner = np.einsum("nij,njk->nik", tubes.bary, F.corner[tubes.facet])
+    return np.asarray(np.einsum("nci,ni->nc", corner - F.frame[row, 0][:, None], k))
 
 
 def wave_sway(F: Facets, tubes: Tubes) -> Floats:
@@ -92,7 +159,7 @@ def wave_sway(F: Facets, tubes: Tubes) -> Floats:
 
 
 def cut_to_figure(F: Facets, tubes: Tubes, *, waves: bool = True) -> Tubes:
-    """Cut tubes at the edges of kinks, and halve them until no edge is too long.
+    """Cut tubes at the edges of kinks and along waves, and halve what is too long.
 
     Parameters
     ----------
@@ -101,7 +168,7 @@ def cut_to_figure(F: Facets, tubes: Tubes, *, waves: bool = True) -> Tubes:
     tubes : Tubes
         Any number of tubes.
     waves : bool
-        Whether to go down to a share of each roller wave's length.
+        Whether to cut them into strips along roller waves.
 
     Returns
     -------
@@ -109,6 +176,8 @@ def cut_to_figure(F: Facets, tubes: Tubes, *, waves: bool = True) -> Tubes:
         As many as it takes, in no particular order.
     """
     tubes = _cut_at_kinks(F, tubes)
+    if waves:
+        tubes = slice_waves(F, tubes, part=STRIP_PART)
     done: list[Tubes] = []
     while len(tubes.facet):
         row = figure_row(F, tubes)
@@ -117,8 +186,6 @@ def cut_to_figure(F: Facets, tubes: Tubes, *, waves: bool = True) -> Tubes:
         most[bent] = np.minimum(LONGEST_EDGE_M, BOW_PART * 2.0 * F.half[row[bent]].min(axis=1))
         corner = np.einsum("nij,njk->nik", tubes.bary, F.corner[tubes.facet])
         excess = np.linalg.norm(np.roll(corner, -1, axis=1) - corner, axis=2) / most[:, None]
-        if waves:
-            excess = np.maximum(excess, wave_spans(F, tubes) / WAVE_PART)
         edge = np.argmax(excess, axis=1)
         long = excess[np.arange(len(edge)), edge] > 1.0 + 1e-9
         done.append(tubes.take(~long))

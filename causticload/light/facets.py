@@ -15,7 +15,7 @@ import numpy as np
 from numba import njit
 
 from causticload.light.sheets import Sheets
-from causticload.scene.model import Floats, Ints, Scene
+from causticload.scene.model import Bools, Floats, Ints, Scene
 
 
 class Facets(NamedTuple):
@@ -133,7 +133,36 @@ def _figure_rows(scene: Scene, sheets: Sheets, panel: Ints) -> dict[str, Any]:
     return rows
 
 
-@njit(cache=True, nogil=True, error_model="numpy")
+def leaning_panels(F: Facets, scene: Scene, sheets: Sheets) -> Bools:
+    """Tell which panels lean away from the mesh's normals where they mirror other mirrors' light.
+
+    Parameters
+    ----------
+    F : Facets
+        The scene's triangles.
+    scene : Scene
+        What stands there.
+    sheets : Sheets
+        What reflects at each facet.
+
+    Returns
+    -------
+    leans : (p,) bool
+        Whether any sheet of the panel does.
+    """
+    leans = np.zeros(len(scene.panels), bool)
+    own = scene.panels.surface
+    row = np.full(len(leans), -1, np.int64)
+    on = F.panel >= 0
+    row[F.panel[on]] = F.row[on]
+    for p in np.flatnonzero(row >= 0):
+        first = row[p] + sheets.rank[sheets.again[own[p]]]
+        k = slice(first, first + sheets.again_count[own[p]])
+        leans[p] = F.bow[k].any() or F.wave[k].any() or F.tilt[k].any() or F.kink[k].any()
+    return leans
+
+
+@njit(cache=True, nogil=True, error_model="numpy", inline="always")
 def position_at(F, t, u, v, w, out):
     """Point of facet ``t`` at barycentric (u, v, w), into ``out`` (3,)."""
     for i in range(3):

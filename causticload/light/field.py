@@ -266,7 +266,7 @@ class _Walk:
             return generation.take(mask), beams.take(mask), *(a[mask] for a in more)
 
         self._lose(*pick(~receiving, code))
-        return _join(
+        return join_generations(
             [
                 self._land(*pick(whole & (code[:, 0] >= 0), code)),
                 self._mirror(*pick(whole & (code[:, 0] <= MIRROR), under)),
@@ -570,7 +570,7 @@ class _Walk:
             under[whole],
         )
         torn &= ~lost
-        return _join(
+        return join_generations(
             [
                 halves,
                 halve_generation(generation.take(torn), _longest_edge(beams.take(torn))),
@@ -658,8 +658,19 @@ class _Walk:
         )
 
 
-def _join(parts: list[Generation]) -> Generation:
-    """Put generations together."""
+def join_generations(parts: list[Generation]) -> Generation:
+    """Put generations together.
+
+    Parameters
+    ----------
+    parts : list of Generation
+        At least one.
+
+    Returns
+    -------
+    generation : Generation
+        All their tubes.
+    """
     tubes = Tubes(*(np.concatenate(a) for a in zip(*(g.tubes for g in parts), strict=True)))
     return Generation(
         tubes, *(np.concatenate(a) for a in zip(*(g[1:] for g in parts), strict=True))

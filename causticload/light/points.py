@@ -15,8 +15,8 @@ from typing import NamedTuple
 import numpy as np
 from numba import njit
 
-from causticload.light.cut import wave_spans, wave_sway
-from causticload.light.field import LINEAR, Bounced, halve_generation
+from causticload.light.cut import WAVE_PART, slice_waves, wave_sway
+from causticload.light.field import LINEAR, Bounced, halve_generation, join_generations
 from causticload.light.field import Generation as _Generation
 from causticload.light.overlap import flux_density
 from causticload.light.prepare import LitScene
@@ -262,6 +262,11 @@ def _room(q: int) -> tuple[Ints, Ints, Floats, Floats, Bools]:
     )
 
 
+def _new_generation(tubes: Tubes) -> _Generation:
+    n = len(tubes.facet)
+    return _Generation(tubes, np.ones(n), np.zeros(n, np.int32), np.zeros(n, np.int32))
+
+
 class _Question:
     """Points that ask under one sun."""
 
@@ -296,22 +301,22 @@ class _Question:
     def direct(self) -> Parts:
         """Light by one reflection: refine the tubes that pass near, then gather."""
         lit = self.lit
-        base = lit.base
-        n = len(base.facet)
-        work = _Generation(base, np.ones(n), np.zeros(n, np.int32), np.zeros(n, np.int32))
+        work = _new_generation(lit.base)
         tubes: list[Tubes] = []
         while len(work.age):
             beams, outcome = light_tubes(lit.F, lit.R, work.tubes, sun_direction=self.s)
             sway = wave_sway(lit.F, work.tubes)
             near, error, edge = self._approach(beams, work.tubes.sheet, sway)
-            # With a wave between its corners a tube may leave by another way than they do.
-            waves = sway > 0.0
-            near &= (outcome == LIT) | waves
-            edge[waves] = wave_spans(lit.F, work.tubes.take(waves)).argmax(axis=1)
-            fine = ((error <= self.fine) & ~waves) | (work.age >= MOST_HALVINGS)
+            waved = near & (sway > 0.0)
+            near &= (outcome == LIT) & ~waved
+            fine = (error <= self.fine) | (work.age >= MOST_HALVINGS)
             tubes.append(work.tubes.take(near & fine))
             rest = near & ~fine
-            work = halve_generation(work.take(rest), edge[rest])
+            # With a wave between its corners a tube may leave by another way than they do.
+            strips = slice_waves(lit.F, work.tubes.take(waved), part=WAVE_PART)
+            work = join_generations(
+                [halve_generation(work.take(rest), edge[rest]), _new_generation(strips)]
+            )
         ready = Tubes(*(np.concatenate(a) for a in zip(*tubes, strict=True)))
         beams, _ = light_tubes(lit.F, lit.R, ready, sun_direction=self.s)
         kept = 1.0 - lit.scatter[ready.sheet]
@@ -403,58 +408,3 @@ class _Question:
             low=load * low[tube],
             high=load * high[tube],
         )
-
-
-def load_limits(
-    lit: LitScene,
-    *,
-    sun_direction: Floats,
-    sun_radius: float,
-    point: int,
-    spacing_m: float,
-    bounced: list[Bounced],
-) -> tuple[float, float]:
-    """Find how far unknown angular laws leave open the load of one receiver point.
-
-    Parameters
-    ----------
-    lit : LitScene
-        The prepared scene.
-    sun_direction : (3,) float
-        Unit vector to the sun, scene frame.
-    sun_radius : float
-        Angular radius of the sun. [rad]
-    point : int
-        Number of the receiver point.
-    spacing_m : float
-        Size of its cell. [m]
-    bounced : list of Bounced
-        Beams after a second reflection.
-
-    Returns
-    -------
-    low, high : float
-        Factors on the load; 1 and 1 where all laws are known. The range is that of unpolarised
-        light, at each reflection. [1]
-    """
-    if (lit.sheets.low == 1.0).all() and (lit.sheets.high == 1.0).all():
-        return 1.0, 1.0
-    n = lit.point_normals[point]
-    u = np.cross(n, [0.0, 0.0, 1.0] if abs(n[2]) < 0.9 else [1.0, 0.0, 0.0])
-    u /= np.linalg.norm(u)
-    step = spacing_m / 3.0 * np.array([-1.0, 0.0, 1.0])
-    a, b = (v.ravel()[:, None] for v in np.meshgrid(step, step))
-    P = lit.points[point] + a * u + b * np.cross(n, u)
-    parts = solve_points(
-        lit,
-        sun_direction=sun_direction,
-        sun_radius=sun_radius,
-        points=P,
-        normals=np.broadcast_to(n, P.shape),
-        bounced=bounced,
-        follow_waves=False,
-    ).parts
-    total = float(parts.load.sum())
-    if total <= 0.0:
-        return 1.0, 1.0
-    return float(parts.low.sum()) / total, float(parts.high.sum()) / total

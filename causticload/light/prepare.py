@@ -10,7 +10,7 @@ import numpy as np
 
 from causticload.light.bvh import Engine, Tracer, build_tracer
 from causticload.light.cut import cut_to_figure
-from causticload.light.facets import Facets, make_facets
+from causticload.light.facets import Facets, leaning_panels, make_facets
 from causticload.light.sheets import Sheets, bow_apart, lay_sheets, panes_of
 from causticload.light.splat import Grids, make_grids
 from causticload.light.targets import Meanings, make_meanings
@@ -119,7 +119,6 @@ def prepare(
     lit = LitScene(
         scene=scene,
         grids=make_grids(scene.charts),
-        meanings=make_meanings(scene),
         tracer=tracer,
         disc=disc,
         exact=lay_sheets(scene, finishes, waves=np.ones_like(waves), nodes=False),
@@ -153,6 +152,7 @@ def _reflecting(scene: Scene, sheets: Sheets, *, cut_waves: bool) -> dict[str, A
     base = cut_to_figure(F, whole_facets(F, facet, first + again), waves=cut_waves)
     return {
         "F": F,
+        "meanings": make_meanings(scene, leaning_panels(F, scene, sheets)),
         "base": base,
         "R": sheets.R,
         "slope_error": sheets.slope_error,

@@ -30,17 +30,19 @@ class Meanings(NamedTuple):
     chart: Ints  # (m,) chart of a mirror that is a receiver too, else -1
 
 
-def make_meanings(scene: Scene) -> Meanings:
+def make_meanings(scene: Scene, leans: Bools) -> Meanings:
     """Say what each triangle is to a ray.
 
-    Flat and figured panels are mirrors of their own; another smooth reflector is one mirror, whose
-    normals run on across its facets. A receiver that is no reflector is lit on the side of its
-    normal only.
+    Flat panels and such as lean by a figure are mirrors of their own; another smooth reflector is
+    one mirror, whose normals run on across its facets. A receiver that is no reflector is lit on
+    the side of its normal only.
 
     Parameters
     ----------
     scene : Scene
         What stands there.
+    leans : (p,) bool
+        Panels whose normals are not the mesh's, so that they end with the panel.
 
     Returns
     -------
@@ -52,9 +54,7 @@ def make_meanings(scene: Scene) -> Meanings:
     back = np.full(len(panel), BLOCKED, np.int32)
     mirrors = panel >= 0
     if mirrors.any():
-        alone = scene.panels.flat.copy()
-        if scene.figures is not None:  # a figure ends with its pane
-            alone |= scene.figures.first >= 0
+        alone = scene.panels.flat | leans
         # Numbers of single panels first, then of smooth surfaces.
         unit = np.where(
             alone[panel[mirrors]], panel[mirrors], len(scene.panels) + scene.surface[mirrors]

@@ -71,9 +71,9 @@ def choose_waves(scene: Scene) -> Bools:
             follow[i] = bool(told)
             continue
         auto.append(i)
-        # A pane's waves, four strips to each and two rows of triangles to a strip.
+        # A pane's waves, eight strips to each; a strip in each half of the pane is two triangles.
         waves = np.abs(g.wave_number[rows]) / (2.0 * np.pi) * 2.0 * g.half[g.panel[rows]]
-        tubes += 8.0 * float(waves.sum())
+        tubes += 32.0 * float(waves.sum())
     follow[auto] = tubes <= FOLLOW_TUBES
     return follow
 

@@ -280,10 +280,10 @@ def test_grid_follows_a_wave_where_that_is_cheap(tmp_path):
     # Strips all alike, as narrow as the cells, fall on the samples in step: up to 1 %.
     assert abs(balance(field)) < 0.015
     inner = np.flatnonzero(np.abs(lit.points - far)[:, :2].max(axis=1) < 0.35)
-    points = loads(lit, lit.points[inner], s).load
+    cells = lit.points[inner][:, None] + square(0.025, 5)
+    points = loads(lit, cells.reshape(-1, 3), s).load.reshape(len(inner), -1).mean(axis=1)
     assert np.ptp(points) > 0.25 * points.mean()  # bands of the wave
-    # A cell's mean over 50 mm of bands 250 mm long, against its middle.
-    assert field.load[inner] == pytest.approx(points, abs=0.04 * points.mean())
+    assert field.load[inner] == pytest.approx(points, abs=0.03 * points.mean())
 
 
 def test_second_reflection_off_panes_that_bow_apart(tmp_path):
