@@ -162,7 +162,7 @@ def leaning_panels(F: Facets, scene: Scene, sheets: Sheets) -> Bools:
     return leans
 
 
-@njit(cache=True, nogil=True, error_model="numpy", inline="always")
+@njit(cache=True, nogil=True, error_model="numpy")
 def position_at(F, t, u, v, w, out):
     """Point of facet ``t`` at barycentric (u, v, w), into ``out`` (3,)."""
     for i in range(3):
@@ -221,11 +221,9 @@ def _lean(F, t, k, u, v, w, out):
         out[i] /= length
 
 
-# Inlined, since a call that is not hands on every array of ``F``, which costs more than the sums:
-# only panes that are not as the mesh has them pay for that.
-@njit(cache=True, nogil=True, error_model="numpy", inline="always")
-def normal_at(F, t, sheet, u, v, w, out):
-    """Unit normal of a sheet of facet ``t`` at barycentric (u, v, w), into ``out`` (3,)."""
+@njit(cache=True, nogil=True, error_model="numpy")
+def mesh_normal_at(F, t, u, v, w, out):
+    """Unit normal of facet ``t`` as the mesh has it, into ``out`` (3,)."""
     for i in range(3):
         out[i] = (
             u * F.corner_normal[t, 0, i]
@@ -235,8 +233,20 @@ def normal_at(F, t, sheet, u, v, w, out):
     length = math.sqrt(out[0] * out[0] + out[1] * out[1] + out[2] * out[2])
     for i in range(3):
         out[i] /= length
+
+
+@njit(cache=True, nogil=True, error_model="numpy")
+def lean_by_figure(F, t, sheet, u, v, w, out):
+    """Tilt the mesh's normal ``out`` by the figure of a sheet of facet ``t``, if it has one."""
     if F.row[t] >= 0:
         _lean(F, t, F.row[t] + F.rank[sheet], u, v, w, out)
+
+
+@njit(cache=True, nogil=True, error_model="numpy")
+def normal_at(F, t, sheet, u, v, w, out):
+    """Unit normal of a sheet of facet ``t`` at barycentric (u, v, w), into ``out`` (3,)."""
+    mesh_normal_at(F, t, u, v, w, out)
+    lean_by_figure(F, t, sheet, u, v, w, out)
 
 
 @njit(cache=True, nogil=True, error_model="numpy")

@@ -13,7 +13,13 @@ from typing import NamedTuple
 import numpy as np
 from numba import njit
 
-from causticload.light.facets import Facets, normal_at, position_at, reflect
+from causticload.light.facets import (
+    Facets,
+    lean_by_figure,
+    mesh_normal_at,
+    position_at,
+    reflect,
+)
 from causticload.optics.tables import lookup
 from causticload.scene.model import Bools, Floats, Ints
 
@@ -184,9 +190,48 @@ def _s_axis(d, n, out):
 
 
 @njit(cache=True, nogil=True, error_model="numpy")
-def _light_tubes(F, R, T, s, B, outcome):
+def _ray_place(bary, j):
+    """Barycentric coordinates of ray ``j`` of a tube: 0 to 2 corners, 3 to 5 between, 6 chief."""
+    if j < 3:
+        return bary[j, 0], bary[j, 1], bary[j, 2]
+    if j == 6:
+        return (
+            (bary[0, 0] + bary[1, 0] + bary[2, 0]) / 3.0,
+            (bary[0, 1] + bary[1, 1] + bary[2, 1]) / 3.0,
+            (bary[0, 2] + bary[1, 2] + bary[2, 2]) / 3.0,
+        )
+    a, b = j - 3, (j - 2) % 3
+    return (
+        0.5 * (bary[a, 0] + bary[b, 0]),
+        0.5 * (bary[a, 1] + bary[b, 1]),
+        0.5 * (bary[a, 2] + bary[b, 2]),
+    )
+
+
+@njit(cache=True, nogil=True, error_model="numpy")
+def _mesh_normals(F, T, N):
+    """Normals of the mesh where the rays of tubes start, into ``N`` (n, 7, 3)."""
+    for k in range(T.facet.size):
+        for j in range(7):
+            u, v, w = _ray_place(T.bary[k], j)
+            mesh_normal_at(F, T.facet[k], u, v, w, N[k, j])
+
+
+@njit(cache=True, nogil=True, error_model="numpy")
+def _lean_normals(F, T, N):
+    """Tilt normals by the figures of panes. Apart, for a call with all of ``F`` is dear."""
+    for k in range(T.facet.size):
+        if F.row[T.facet[k]] < 0:
+            continue
+        for j in range(7):
+            u, v, w = _ray_place(T.bary[k], j)
+            lean_by_figure(F, T.facet[k], T.sheet[k], u, v, w, N[k, j])
+
+
+@njit(cache=True, nogil=True, error_model="numpy")
+def _light_tubes(F, R, T, s, N, B, outcome):
     """Light each tube by the sun in direction ``s``; fills the beams ``B`` and ``outcome``."""
-    n, d, x = np.empty(3), np.empty(3), np.empty(3)
+    d, x = np.empty(3), np.empty(3)
     for i in range(3):
         d[i] = -s[i]
     for k in range(T.facet.size):
@@ -196,15 +241,9 @@ def _light_tubes(F, R, T, s, B, outcome):
         side = 1.0 if cos_face > 0.0 else -1.0
         outcome[k] = LIT if cos_face != 0.0 else TURNED_AWAY
         for j in range(6):
-            if j < 3:
-                u, v, w = T.bary[k, j, 0], T.bary[k, j, 1], T.bary[k, j, 2]
-            else:
-                a, b = j - 3, (j - 2) % 3
-                u = 0.5 * (T.bary[k, a, 0] + T.bary[k, b, 0])
-                v = 0.5 * (T.bary[k, a, 1] + T.bary[k, b, 1])
-                w = 0.5 * (T.bary[k, a, 2] + T.bary[k, b, 2])
+            u, v, w = _ray_place(T.bary[k], j)
             position_at(F, t, u, v, w, x)
-            normal_at(F, t, T.sheet[k], u, v, w, n)
+            n = N[k, j]
             cos_n = side * (n[0] * s[0] + n[1] * s[1] + n[2] * s[2])
             if cos_n <= 0.0:
                 outcome[k] = TURNED_AWAY
@@ -217,10 +256,7 @@ def _light_tubes(F, R, T, s, B, outcome):
         for i in range(3):
             B.side[k, i] = side * f[i]
         _frame_beam(B.start[k], B.direction[k], B.chief[k], B.frame[k])
-        u = (T.bary[k, 0, 0] + T.bary[k, 1, 0] + T.bary[k, 2, 0]) / 3.0
-        v = (T.bary[k, 0, 1] + T.bary[k, 1, 1] + T.bary[k, 2, 1]) / 3.0
-        w = (T.bary[k, 0, 2] + T.bary[k, 1, 2] + T.bary[k, 2, 2]) / 3.0
-        normal_at(F, t, T.sheet[k], u, v, w, n)
+        n = N[k, 6]
         cos_theta = min(1.0, abs(n[0] * s[0] + n[1] * s[1] + n[2] * s[2]))
         _s_axis(d, n, B.s_axis[k])
         B.before[k, :] = 0.0
@@ -258,7 +294,11 @@ def light_tubes(F: Facets, R: Floats, tubes: Tubes, *, sun_direction: Floats) ->
     beams = empty_beams(n)
     outcome = np.empty(n, np.int32)
     s = np.ascontiguousarray(sun_direction, dtype=np.float64)
-    _light_tubes(F, R, tubes, s, beams, outcome)
+    normals = np.empty((n, 7, 3))
+    _mesh_normals(F, tubes, normals)
+    if len(F.half):  # rows of panes that are not as the mesh has them
+        _lean_normals(F, tubes, normals)
+    _light_tubes(F, R, tubes, s, normals, beams, outcome)
     return beams, outcome
 
 
