@@ -112,12 +112,13 @@ def assess_skin(history: History, check: PeakCheck, *, absorbed_share: float = 1
     seconds = soon if np.isfinite(soon) and peak > ISO_13571_PAIN.flux_min else None
     d = float(pain.value)
     stays = (
-        f"A person who stays at the spot all day gathers {d:.1f} times the dose of pain and "
-        f"{float(burn.value):.1f} times that of a second-degree burn"
+        f"A person who stays at the spot all day gathers {_times(d)} the dose of pain and "
+        f"{_times(float(burn.value))} that of a second-degree burn"
         if d >= 1.0
         else f"A person who stays at the spot gathers {d:.2f} of the dose of pain"
     )
-    when = f"; at the peak's load pain comes in about {seconds:.0f} s" if seconds else ""
+    soon_said = "under a second" if soon < 1.0 else f"about {soon:.0f} s"
+    when = f"; at the peak's load pain comes in {soon_said}" if seconds else ""
     return SkinFinding(
         absorbed_share=absorbed_share,
         pain_dose=d,
@@ -129,6 +130,11 @@ def assess_skin(history: History, check: PeakCheck, *, absorbed_share: float = 1
         text=f"{stays}{when}. One who walks straight through at {WALKING_SPEED} m/s gathers "
         f"{float(walking.value):.2f} of it.",
     )
+
+
+def _times(dose_over_effect: float) -> str:
+    """Write a multiple of a dose; past twenty the laws say no more than that it is many."""
+    return "over 20 times" if dose_over_effect > 20.0 else f"{dose_over_effect:.1f} times"
 
 
 def assess_surface(
